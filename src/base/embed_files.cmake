@@ -1,3 +1,4 @@
+# SPDX-License-Identifier: GPL-3.0-or-later
 # cmake -DOUTPUT=<.cpp> -DFILES=<list> -P embed_files.cmake
 # Writes embedded_file.hpp's function with the content of each file as a byte array.
 set(table "")

@@ -1,0 +1,25 @@
+# SPDX-License-Identifier: GPL-3.0-or-later
+# What `cmake --install` lays down: program, library, drawing module, public headers, and the package
+# files through which other projects find Headwater::headwater. Templates are inside the library.
+include(CMakePackageConfigHelpers)
+set(headwater_package_folder ${CMAKE_INSTALL_LIBDIR}/cmake/Headwater)
+
+install(TARGETS headwater EXPORT HeadwaterTargets LIBRARY DESTINATION ${CMAKE_INSTALL_LIBDIR})
+install(TARGETS headwater_program RUNTIME DESTINATION ${CMAKE_INSTALL_BINDIR})
+if(TARGET headwater_view)  # loaded with dlopen from the library's own folder, never linked
+  install(TARGETS headwater_view LIBRARY DESTINATION ${CMAKE_INSTALL_LIBDIR})
+endif()
+install(DIRECTORY ${CMAKE_SOURCE_DIR}/include/headwater DESTINATION ${CMAKE_INSTALL_INCLUDEDIR}
+        FILES_MATCHING PATTERN "*.hpp")
+
+# The targets file carries EIGEN_MAX_ALIGN_BYTES=32 to clients: they may be built without AVX, and
+# still allocate matrices as the library does.
+install(EXPORT HeadwaterTargets NAMESPACE Headwater:: DESTINATION ${headwater_package_folder})
+configure_package_config_file(${CMAKE_SOURCE_DIR}/src/HeadwaterConfig.cmake.in
+  ${CMAKE_BINARY_DIR}/HeadwaterConfig.cmake INSTALL_DESTINATION ${headwater_package_folder})
+# Before 1.0 each minor version may change the interface.
+write_basic_package_version_file(${CMAKE_BINARY_DIR}/HeadwaterConfigVersion.cmake
+  VERSION ${PROJECT_VERSION} COMPATIBILITY SameMinorVersion)
+install(FILES ${CMAKE_BINARY_DIR}/HeadwaterConfig.cmake
+              ${CMAKE_BINARY_DIR}/HeadwaterConfigVersion.cmake
+        DESTINATION ${headwater_package_folder})

@@ -1,0 +1,58 @@
+# SPDX-License-Identifier: GPL-3.0-or-later
+# The order of the wings (src/wings.txt): a line may name only earlier lines, every folder is a wing,
+# and a file includes only wings on its own wing's line. Private headers stay in their wing.
+include("${CMAKE_CURRENT_LIST_DIR}/project_files.cmake")
+read_table(allowed wings "${ROOT}/src/wings.txt")
+
+set(earlier "")
+foreach(wing IN LISTS wings)
+  foreach(other IN LISTS allowed_${wing})
+    if(NOT other IN_LIST earlier)
+      message(SEND_ERROR "src/wings.txt: '${wing}' may not use '${other}', which is not an earlier line")
+    endif()
+  endforeach()
+  list(APPEND earlier ${wing})
+endforeach()
+
+file(GLOB folders RELATIVE "${ROOT}/src" "${ROOT}/src/*/")
+file(GLOB public_folders RELATIVE "${ROOT}/include/headwater" "${ROOT}/include/headwater/*")
+foreach(folder IN LISTS folders public_folders)
+  # src/reference: the slow twins, linked by tests and benchmarks only.
+  if(NOT folder IN_LIST wings AND NOT folder STREQUAL "reference"
+     AND (IS_DIRECTORY "${ROOT}/src/${folder}" OR IS_DIRECTORY "${ROOT}/include/headwater/${folder}"))
+    message(SEND_ERROR "${folder}: no wing of src/wings.txt")
+  endif()
+endforeach()
+
+function(check_include file wing line)
+  if(line MATCHES "[<\"]headwater/([a-z_]+)/")
+    set(other ${CMAKE_MATCH_1})
+    if(NOT other STREQUAL wing AND NOT other IN_LIST allowed_${wing})
+      message(SEND_ERROR "${file}: wing '${wing}' may not include wing '${other}': ${line}")
+    endif()
+  elseif(line MATCHES "\"(\\.\\./|.*/\\.\\./)")
+    message(SEND_ERROR "${file}: name the wing instead of '../': ${line}")
+  elseif(line MATCHES "[<\"]([a-z_]+)/")
+    set(other ${CMAKE_MATCH_1})
+    if(NOT other STREQUAL wing AND (other IN_LIST wings OR other STREQUAL "reference"))
+      message(SEND_ERROR "${file}: '${other}' keeps this header to itself: ${line}")
+    endif()
+  endif()
+endfunction()
+
+set(count 0)
+foreach(wing IN LISTS wings)
+  file(GLOB_RECURSE files RELATIVE "${ROOT}" "${ROOT}/include/headwater/${wing}/*.hpp"
+       "${ROOT}/src/${wing}/*.hpp" "${ROOT}/src/${wing}/*.cpp")
+  foreach(file IN LISTS files)
+    file(STRINGS "${ROOT}/${file}" includes REGEX "^[ \t]*#[ \t]*include")
+    foreach(line IN LISTS includes)
+      check_include("${file}" ${wing} "${line}")
+      math(EXPR count "${count} + 1")
+    endforeach()
+  endforeach()
+endforeach()
+if(count EQUAL 0)
+  message(SEND_ERROR "no include found under ${ROOT}: is it the source folder?")
+endif()
+message(STATUS "${count} includes checked")

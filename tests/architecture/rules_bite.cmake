@@ -1,0 +1,57 @@
+# SPDX-License-Identifier: GPL-3.0-or-later
+# Each rule passes on a small sound tree and fails on the same tree with one flaw.
+cmake_minimum_required(VERSION 3.25)
+set(licence "// SPDX-License-Identifier: GPL-3.0-or-later\n")
+
+function(sound_tree)
+  file(REMOVE_RECURSE "${WORK}")
+  file(WRITE "${WORK}/src/wings.txt" "base:\nsignal: base\nmodel: base signal\n")
+  file(WRITE "${WORK}/.gitignore" "/build*/\n")
+  foreach(file CMakeLists.txt README.md DEVELOPERS.md CMakePresets.json)
+    file(WRITE "${WORK}/${file}" "# SPDX-License-Identifier: GPL-3.0-or-later\n")
+  endforeach()
+  file(WRITE "${WORK}/include/headwater/base/a.hpp" "${licence}#pragma once\n#include <vector>\n")
+  file(WRITE "${WORK}/src/signal/b.cpp" "${licence}#include <headwater/base/a.hpp>\n")
+endfunction()
+
+function(check rule expected flaw)
+  execute_process(COMMAND ${CMAKE_COMMAND} "-DROOT=${WORK}" "-DCLANG_FORMAT=${CLANG_FORMAT}"
+    -P "${CMAKE_CURRENT_LIST_DIR}/check_${rule}.cmake"
+    RESULT_VARIABLE result OUTPUT_QUIET ERROR_VARIABLE findings)
+  if(expected STREQUAL "passes" AND NOT result EQUAL 0)
+    message(SEND_ERROR "${rule} finds fault with a sound tree: ${findings}")
+  elseif(expected STREQUAL "fails" AND result EQUAL 0)
+    message(SEND_ERROR "${rule} misses: ${flaw}")
+  endif()
+endfunction()
+
+# flaw(<rule> <file> <content>): the tree with this file added or replaced.
+function(flaw rule file content)
+  sound_tree()
+  file(WRITE "${WORK}/${file}" "${content}")
+  check(${rule} fails "${file}: ${content}")
+endfunction()
+
+foreach(rule wings third_parties cycles files top_level format)
+  sound_tree()
+  check(${rule} passes "")
+endforeach()
+
+flaw(wings src/wings.txt "base: signal\nsignal: base\n")
+flaw(wings src/base/c.cpp "${licence}#include <headwater/signal/b.hpp>\n")
+flaw(wings src/base/c.cpp "${licence}#include \"../signal/b.hpp\"\n")
+flaw(wings src/signal/c.cpp "${licence}#include \"base/private.hpp\"\n")
+flaw(wings src/extra/c.cpp "${licence}")
+flaw(third_parties include/headwater/base/c.hpp "${licence}#include <fmt/core.h>\n")
+flaw(third_parties src/signal/c.cpp "${licence}#include <CGAL/Surface_mesh.h>\n")
+flaw(third_parties src/base/c.cpp "${licence}#include <vtkNew.h>\n")
+flaw(third_parties src/base/c.cpp "${licence}#include <armadillo.h>\n")
+flaw(cycles include/headwater/base/a.hpp "${licence}#include <headwater/base/a.hpp>\n")
+flaw(files src/base/c.cpp "int x;\n")
+string(REPEAT "int x;\n" 400 long)
+flaw(files src/base/c.cpp "${licence}${long}")
+flaw(files src/base/c.cpp "${licence}const char* path = \"/ho${empty}me/someone/data\";\n")
+flaw(files src/base/c.cpp "${licence}// TO${empty}DO\n")
+flaw(top_level notes.txt "anything")
+flaw(format src/base/c.cpp "${licence}int  x ;\n")
+file(REMOVE_RECURSE "${WORK}")
