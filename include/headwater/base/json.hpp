@@ -1,9 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // An ordered JSON value: what side files, provenance and --json are made of.
 #pragma once
+#include <cstddef>
 #include <filesystem>
-#include <initializer_list>
-#include <memory>
 #include <string>
 #include <string_view>
 #include <utility>
@@ -49,11 +48,14 @@ class Json {
   std::string text() const;        ///< throws std::logic_error when not a string
   double number() const;           ///< throws std::logic_error when not a number
 
-  /// Indented text, two spaces, members in order, numbers in shortest round-trip form.
+  /// Indented text, two spaces, members in order, numbers in shortest round-trip form; a list of
+  /// plain values that fits a line stays on it.
   std::string dump() const;
 
  private:
   explicit Json(Object value) : value_(std::move(value)) {}
+  void append_to(std::string& text, std::size_t indent) const;
+  bool append_on_one_line(std::string& text, std::size_t indent) const;
   std::variant<std::monostate, bool, long long, double, std::string, Array, Object> value_;
 };
 
