@@ -38,7 +38,9 @@ class TrialCounts {
  public:
   /// The same count for every average.
   explicit TrialCounts(double trials_each) : each_(trials_each) {}
-  explicit TrialCounts(Table table);  ///< checks columns and positive whole numbers, all rows at once
+  /// Checks columns and whole numbers, all rows at once. A count of zero is legal here: it stops only
+  /// the participant who needs it.
+  explicit TrialCounts(Table table);
   /// Throws InputError when there is no row, more than one, or zero trials.
   double trials(std::string_view participant, std::string_view condition) const;
 

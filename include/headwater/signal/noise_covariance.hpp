@@ -11,8 +11,8 @@
 //   table     the user's, labelled, uV^2, one trial.
 // Shrinkage towards scaled identity: S* = (1-a) S + a tr(S)/p I. Weight a: Ledoit & Wolf 2004
 // J Multivar Anal 88:365, with the variance of S enlarged by tau = 1 + 2 sum_k (1-k/T) rho_k^2 for
-// samples that are correlated in time (rho_k: mean autocorrelation over channels at lag k, Bartlett's
-// formula; common practice), or a number from the user.
+// samples that are correlated in time (rho_k: mean autocorrelation over channels, weighted by variance,
+// at lag k, Bartlett's formula; common practice), or a number from the user.
 #pragma once
 #include <Eigen/Core>
 #include <filesystem>

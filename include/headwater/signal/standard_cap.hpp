@@ -15,6 +15,7 @@
 #pragma once
 #include <Eigen/Core>
 #include <optional>
+#include <string>
 #include <string_view>
 
 #include <headwater/base/labels.hpp>
