@@ -1,0 +1,40 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// eLORETA (Pascual-Marqui 2007 arXiv:0710.3341): source weights W_l (3 x 3) that make the localisation of
+// any single source exact,
+//   W_l <- [K_l'(K W^-1 K' + lambda C)^-1 K_l]^(1/2), all blocks at once from W = I until the largest
+//   relative change of a block is below the tolerance;
+//   J_l = W_l^-1 K_l'(K W^-1 K' + lambda C)^-1 y.
+// W depends on lambda: each lambda is iterated for itself (from the last one's weights, which reach the
+// same fixed point sooner). Unit: A m.
+#pragma once
+#include <vector>
+
+#include <headwater/inverse/ridge.hpp>
+
+namespace headwater {
+
+struct EloretaOptions {
+  double tolerance = 1e-6;
+  int most_iterations = 200;
+};
+
+class Eloreta {
+ public:
+  explicit Eloreta(const Subspace& subspace, const EloretaOptions& options = {});
+  /// Of the unweighted gram matrix K K': for the choice of lambda.
+  const GramSpectrum& spectrum() const { return spectrum_; }
+  SourceOperator at(double lambda, double noise_scale);
+  int iterations() const { return iterations_; }  ///< of the last call of at()
+  bool converged() const { return converged_; }
+
+ private:
+  EloretaOptions options_;
+  GramSpectrum spectrum_;
+  Eigen::MatrixXd map_;       // W B'
+  Eigen::MatrixXd gain_;      // W K
+  std::vector<Eigen::Matrix3d> inverse_weight_;
+  int iterations_ = 0;
+  bool converged_ = false;
+};
+
+}  // namespace headwater
