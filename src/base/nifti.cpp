@@ -3,7 +3,7 @@
 // tell a full disk from success, and its reader allocates what a header promises before it looks at
 // the data. The unit of the values has no field in NIfTI-1: it stands in front of the description,
 // "amplitude [nA m]: ...", and is read back from there.
-#include "base/gzip.hpp"
+#include "base/zlib_streams.hpp"
 
 #include <headwater/base/atomic_file.hpp>
 #include <headwater/base/error.hpp>

@@ -2,7 +2,7 @@
 // An appended block of compressed data is, in unsigned 64-bit numbers: #blocks, size of a block
 // before compression, size of the last block (0: it is full), compressed size of each block; then
 // the zlib streams. It follows an underscore; offsets count from the byte after it.
-#include "base/gzip.hpp"
+#include "base/zlib_streams.hpp"
 
 #include <headwater/base/atomic_file.hpp>
 #include <headwater/base/vtk_grid.hpp>

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include "base/gzip.hpp"
+#include "base/zlib_streams.hpp"
 
 #include <zlib.h>
 
