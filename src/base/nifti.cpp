@@ -14,6 +14,7 @@
 #include <nifti1_io.h>
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 #include <cstdint>
 #include <cstring>
@@ -132,6 +133,12 @@ std::string unpacked(const std::filesystem::path& path, const std::string& bytes
   }
 }
 
+bool is_plain_number(int datatype) {
+  constexpr std::array plain{DT_INT8,   DT_UINT8, DT_INT16,  DT_UINT16,  DT_INT32,
+                             DT_UINT32, DT_INT64, DT_UINT64, DT_FLOAT32, DT_FLOAT64};
+  return std::find(plain.begin(), plain.end(), datatype) != plain.end();
+}
+
 struct OwnHeader {
   nifti_1_header header;
   bool swapped;  ///< the file, and so its data, is in the other byte order
@@ -164,6 +171,9 @@ OwnHeader checked_header(const std::filesystem::path& path, const std::string& b
                                own.dim[i], i));
   if (!(own.vox_offset >= 0 && own.vox_offset < 1e9f))
     refuse(path, fmt::format("its header puts the data at byte {}.", own.vox_offset));
+  if (!is_plain_number(own.datatype))
+    refuse(path, fmt::format("holds values of type {} ({}); plain numbers are expected.",
+                             nifti_datatype_string(own.datatype), own.datatype));
   return {own, swapped};
 }
 
@@ -179,40 +189,30 @@ void convert(const char* bytes, const nifti_image& image, Eigen::MatrixXd& value
   }
 }
 
-bool convert_any(const char* bytes, const nifti_image& image, Eigen::MatrixXd& values) {
+void convert_any(const char* bytes, const nifti_image& image, Eigen::MatrixXd& values) {
   switch (image.datatype) {
     case DT_INT8:
-      convert<std::int8_t>(bytes, image, values);
-      return true;
+      return convert<std::int8_t>(bytes, image, values);
     case DT_UINT8:
-      convert<std::uint8_t>(bytes, image, values);
-      return true;
+      return convert<std::uint8_t>(bytes, image, values);
     case DT_INT16:
-      convert<std::int16_t>(bytes, image, values);
-      return true;
+      return convert<std::int16_t>(bytes, image, values);
     case DT_UINT16:
-      convert<std::uint16_t>(bytes, image, values);
-      return true;
+      return convert<std::uint16_t>(bytes, image, values);
     case DT_INT32:
-      convert<std::int32_t>(bytes, image, values);
-      return true;
+      return convert<std::int32_t>(bytes, image, values);
     case DT_UINT32:
-      convert<std::uint32_t>(bytes, image, values);
-      return true;
+      return convert<std::uint32_t>(bytes, image, values);
     case DT_INT64:
-      convert<std::int64_t>(bytes, image, values);
-      return true;
+      return convert<std::int64_t>(bytes, image, values);
     case DT_UINT64:
-      convert<std::uint64_t>(bytes, image, values);
-      return true;
+      return convert<std::uint64_t>(bytes, image, values);
     case DT_FLOAT32:
-      convert<float>(bytes, image, values);
-      return true;
+      return convert<float>(bytes, image, values);
     case DT_FLOAT64:
-      convert<double>(bytes, image, values);
-      return true;
+      return convert<double>(bytes, image, values);
     default:
-      return false;
+      throw std::logic_error("NIfTI type that the header check should have refused");
   }
 }
 
@@ -266,9 +266,6 @@ Volume read_nifti(const std::filesystem::path& path) {
   const auto [header, swapped] = checked_header(path, unpacked(path, packed, kHeaderBytes));
   const Image image(nifti_convert_nhdr2nim(header, nullptr), &nifti_image_free);
   if (!image) refuse(path, "its header is damaged.");
-  if (image->nbyper < 1 || image->nbyper > 8)
-    refuse(path, fmt::format("holds values of type {}; plain numbers are expected.",
-                             nifti_datatype_string(image->datatype)));
 
   // Sizes are below 2^15 in at most 4 dimensions: the product fits 64 bits.
   const auto offset = static_cast<std::size_t>(image->iname_offset);
@@ -290,9 +287,7 @@ Volume read_nifti(const std::filesystem::path& path) {
   const Eigen::Index voxels = Eigen::Index{1} * image->nx * image->ny * image->nz;
   const Eigen::Index times = header.dim[0] > 3 ? header.dim[4] : 1;
   volume.values.resize(voxels, times);
-  if (!convert_any(bytes.data() + offset, *image, volume.values))
-    refuse(path, fmt::format("holds values of type {}; plain numbers are expected.",
-                             nifti_datatype_string(image->datatype)));
+  convert_any(bytes.data() + offset, *image, volume.values);
   const double second = seconds_per_unit(image->time_units);
   volume.first_time_s = second * static_cast<double>(image->toffset);
   volume.time_step_s = header.dim[0] > 3 ? second * static_cast<double>(image->dt) : 0;
