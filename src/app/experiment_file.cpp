@@ -1,0 +1,382 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/app/experiment_file.hpp>
+
+#include <algorithm>
+#include <set>
+
+#include <fmt/core.h>
+
+#include <headwater/base/error.hpp>
+#include <headwater/base/table.hpp>
+#include <headwater/base/units.hpp>
+
+#include "app/key_reader.hpp"
+
+namespace headwater {
+namespace {
+
+namespace fs = std::filesystem;
+
+std::string replace_all(std::string text, const std::string& what, const std::string& with) {
+  for (auto at = text.find(what); at != std::string::npos; at = text.find(what, at + with.size()))
+    text.replace(at, what.size(), with);
+  return text;
+}
+
+/// Reads one section after the other into the experiment; problems go to the reader.
+class Assembly {
+ public:
+  Assembly(KeyReader& keys, Experiment& experiment)
+      : keys_(keys), out_(experiment), folder_(fs::absolute(experiment.file).parent_path()) {}
+
+  void run() {
+    out_.title = keys_.text("title");
+    out_.output = absolute(keys_.text("output"));
+    out_.seed = static_cast<std::uint64_t>(keys_.number("seed"));
+    read_averages();
+    read_conditions();
+    read_participants();
+    read_contrasts();
+    read_windows();
+    read_montage();
+    read_head();
+    read_grid();
+    read_noise();
+    read_inverse();
+    read_regions();
+    out_.write_series = keys_.flag("files.series");
+    out_.write_courses = keys_.flag("files.courses");
+  }
+
+ private:
+  fs::path absolute(const std::string& text) const { return (folder_ / text).lexically_normal(); }
+
+  std::optional<fs::path> optional_path(const std::string& key) {
+    if (!keys_.has(key) || keys_.text(key).empty()) return {};
+    fs::path path = absolute(keys_.text(key));
+    if (!fs::exists(path))
+      keys_.problem(keys_.find(key), fmt::format("'{}': there is no file {}.", key, path.string()));
+    return path;
+  }
+
+  void read_averages() {
+    const std::string pattern = keys_.text("averages.file");
+    out_.averages_pattern = pattern.empty() ? "" : absolute(pattern).string();
+    for (const char* part : {"{participant}", "{condition}"})
+      if (!pattern.empty() && pattern.find(part) == std::string::npos)
+        keys_.problem(keys_.find("averages.file"),
+                      fmt::format("'averages.file' lacks {}: the name of each file must say it.", part));
+    if (const auto* counts = keys_.find("averages.counts")) {
+      if (counts->is_number())
+        out_.trials_each = counts->number();
+      else
+        out_.counts_table = optional_path("averages.counts");
+    }
+    const std::string unit = fold_case(keys_.text("averages.unit"));
+    out_.unit = unit == "v" ? VoltageUnit::volt : unit == "mv" ? VoltageUnit::millivolt : VoltageUnit::microvolt;
+  }
+
+  void read_conditions() {
+    for (const auto* entry : keys_.entries("conditions")) {
+      Condition condition{text_of(*entry, "name"), {}};
+      for (const auto& [key, value] : std::get<TomlValue::Table>(entry->value))
+        if (key != "name" && value.is_text())
+          condition.factors[key] = std::get<std::string>(value.value);
+      for (const auto& other : out_.conditions)
+        if (other.name == condition.name)
+          keys_.problem(entry, fmt::format("condition '{}' is there twice.", condition.name));
+      out_.conditions.push_back(condition);
+    }
+    if (out_.conditions.empty())
+      keys_.problem(nullptr, "no [[conditions]]: name at least one, as in the file names.");
+  }
+
+  void read_participants() {
+    if (const auto table = optional_path("participants.table")) {
+      if (!fs::exists(*table)) return;
+      try {
+        const Table list = read_table(*table, "participants table");
+        const auto column = list.column("participant_id");
+        for (const auto& row : list.rows) out_.participants.push_back(row[column]);
+      } catch (const Error& error) {
+        keys_.problem(keys_.find("participants.table"), error.what());
+      }
+      for (const auto& repeated : repeated_labels(out_.participants))
+        keys_.problem(keys_.find("participants.table"),
+                      fmt::format("participant '{}' is in the table twice.", repeated));
+    } else {
+      find_participants();
+    }
+    for (const auto& name : keys_.texts("participants.leave_out")) {
+      const auto found = std::find(out_.participants.begin(), out_.participants.end(), name);
+      if (found == out_.participants.end())
+        keys_.problem(keys_.find("participants.leave_out"),
+                      fmt::format("there is no participant '{}' to leave out.{}", name,
+                                  did_you_mean(name, out_.participants)));
+      else
+        out_.participants.erase(found);
+    }
+    if (out_.participants.empty() && keys_.problems().empty())
+      keys_.problem(keys_.find("averages.file"),
+                    fmt::format("no participant: no file fits {}.", out_.averages_pattern));
+  }
+
+  /// Participants of whom a file of the first condition is there. {participant} may stand in one
+  /// component of the path more than once, or in several.
+  void find_participants() {
+    if (out_.averages_pattern.empty() || out_.conditions.empty()) return;
+    const std::string pattern =
+        replace_all(out_.averages_pattern, "{condition}", out_.conditions[0].name);
+    const auto at = pattern.find("{participant}");
+    if (at == std::string::npos) return;
+    const auto slash = pattern.rfind('/', at);
+    const fs::path folder = pattern.substr(0, slash);
+    const std::string prefix = pattern.substr(slash + 1, at - slash - 1);
+    std::error_code failed;
+    std::set<std::string> found;
+    for (const auto& entry : fs::directory_iterator(folder, failed)) {
+      const std::string name = entry.path().filename().string();
+      if (name.rfind(prefix, 0) != 0) continue;
+      // Every possible length: the one whose filled-in pattern exists is the participant.
+      for (std::size_t length = 1; length + prefix.size() <= name.size(); ++length) {
+        const std::string who = name.substr(prefix.size(), length);
+        if (fs::exists(replace_all(pattern, "{participant}", who), failed)) found.insert(who);
+      }
+    }
+    out_.participants.assign(found.begin(), found.end());
+  }
+
+  void read_contrasts() {
+    for (const auto* entry : keys_.entries("contrasts")) {
+      ContrastPlan plan{text_of(*entry, "name"), {}};
+      const auto *weights = entry->find("weights"), *effect = entry->find("effect");
+      if ((weights != nullptr) == (effect != nullptr)) {
+        keys_.problem(entry, fmt::format("contrast '{}' needs either weights or an effect.", plan.name));
+      } else if (weights && weights->is_table()) {
+        read_weights(*weights, plan);
+      } else if (effect && effect->is_table()) {
+        read_effect(*effect, plan);
+      }
+      for (const auto& other : out_.contrasts)
+        if (file_label(other.name) == file_label(plan.name))
+          keys_.problem(entry, fmt::format("contrasts '{}' and '{}' would share their files: rename one.",
+                                           other.name, plan.name));
+      out_.contrasts.push_back(plan);
+    }
+    if (keys_.has("contrasts")) return;
+    for (const auto& condition : out_.conditions)
+      out_.contrasts.push_back({condition.name, {{condition.name, 1.0}}});
+  }
+
+  void read_weights(const TomlValue& weights, ContrastPlan& plan) {
+    Labels names;
+    for (const auto& condition : out_.conditions) names.push_back(condition.name);
+    bool any = false;
+    for (const auto& [name, value] : std::get<TomlValue::Table>(weights.value)) {
+      if (!value.is_number()) return;
+      if (!find_label(names, name))
+        keys_.problem(&value, fmt::format("contrast '{}' weights condition '{}', which is not one of "
+                                          "[[conditions]].{}", plan.name, name, did_you_mean(name, names)));
+      if (value.number() == 0) continue;
+      any = true;
+      plan.weights.push_back({name, value.number()});
+    }
+    if (!any) keys_.problem(&weights, fmt::format("contrast '{}' has no weight but 0.", plan.name));
+  }
+
+  void read_effect(const TomlValue& effect, ContrastPlan& plan) {
+    std::vector<EffectFactor> factors;
+    for (const auto& [factor, levels] : std::get<TomlValue::Table>(effect.value)) {
+      if (!levels.is_array()) return;
+      const auto& pair = std::get<TomlValue::Array>(levels.value);
+      if (pair.size() != 2 || !pair[0].is_text() || !pair[1].is_text()) return;
+      factors.push_back({factor, std::get<std::string>(pair[0].value),
+                         std::get<std::string>(pair[1].value)});
+    }
+    try {
+      plan.weights = effect_weights(out_.conditions, factors);
+    } catch (const Error& error) {
+      keys_.problem(&effect, fmt::format("contrast '{}': {}", plan.name, error.what()));
+    }
+  }
+
+  void read_windows() {
+    Labels contrasts;
+    for (const auto& plan : out_.contrasts) contrasts.push_back(plan.name);
+    for (const auto* entry : keys_.entries("windows")) {
+      const auto *from = entry->find("from_ms"), *to = entry->find("to_ms");
+      if (!from || !to || !from->is_number() || !to->is_number()) continue;
+      TimeWindow window{text_of(*entry, "name"), from->number() * kMillisecond,
+                        to->number() * kMillisecond, texts_of(*entry, "contrasts")};
+      if (window.from_s > window.to_s)
+        keys_.problem(entry, fmt::format("window '{}' ends before it begins.", window.name));
+      for (const auto& name : window.contrasts)
+        if (!find_label(contrasts, name))
+          keys_.problem(entry, fmt::format("window '{}' names contrast '{}', which is not there.{}",
+                                           window.name, name, did_you_mean(name, contrasts)));
+      for (const auto& other : out_.windows)
+        if (file_label(other.name) == file_label(window.name))
+          keys_.problem(entry, fmt::format("windows '{}' and '{}' would share their files: rename one.",
+                                           other.name, window.name));
+      out_.windows.push_back(window);
+    }
+    if (!keys_.has("windows"))
+      keys_.problem(nullptr, "no [[windows]]: name at least one latency window (name, from_ms, to_ms).");
+  }
+
+  void read_montage() {
+    const std::string positions = keys_.text("montage.positions");
+    if (positions != "standard") {
+      out_.positions = absolute(positions).string();
+      if (positions.find("{participant}") == std::string::npos && !fs::exists(out_.positions))
+        keys_.problem(keys_.find("montage.positions"),
+                      fmt::format("'montage.positions': there is no file {} (\"standard\" takes the "
+                                  "10-5 names).", out_.positions));
+    }
+    out_.position_space =
+        fold_case(keys_.text("montage.space")) == "mni" ? PositionSpace::mni : PositionSpace::head;
+    out_.edits.drop = keys_.texts("montage.drop");
+    out_.edits.zero = keys_.texts("montage.zero");
+    if (const auto* rename = keys_.find("montage.rename"); rename && rename->is_table())
+      for (const auto& [from, to] : std::get<TomlValue::Table>(rename->value))
+        if (to.is_text()) out_.edits.rename[from] = std::get<std::string>(to.value);
+  }
+
+  void read_head() {
+    const auto* radius = keys_.find("head.radius_mm");
+    out_.fit_radius = radius && radius->is_text();
+    if (out_.fit_radius && out_.positions == "standard")
+      keys_.problem(radius, "'head.radius_mm' is \"fit\", but standard positions have no measured "
+                            "radius: give a number or a table of positions.");
+    const double scalp_m = (out_.fit_radius ? 92 : keys_.number("head.radius_mm")) * kMillimetre;
+    const auto shells = keys_.numbers("head.shells");
+    const auto sigma = keys_.numbers("head.conductivity_S_per_m");
+    out_.head.radii_m.resize(static_cast<Eigen::Index>(shells.size()));
+    out_.head.conductivity_S_per_m.resize(static_cast<Eigen::Index>(sigma.size()));
+    std::copy(shells.begin(), shells.end(), out_.head.radii_m.data());
+    std::copy(sigma.begin(), sigma.end(), out_.head.conductivity_S_per_m.data());
+    out_.head.radii_m *= scalp_m;
+    if (!shells.empty() && std::abs(shells.back() - 1) > 1e-12)
+      keys_.problem(keys_.find("head.shells"), "'head.shells' must end with 1, the scalp itself.");
+    try {
+      check_head(out_.head);
+      if (out_.head.radii_m.size() > 0 && !keys_.has("grid.points") && shells[0] < 0.83)
+        keys_.problem(keys_.find("head.shells"),
+                      fmt::format("the innermost shell ends at {:g} of the scalp's radius, but the template "
+                                  "brain reaches 0.83: sources would lie in the skull.", shells[0]));
+    } catch (const Error& error) {
+      keys_.problem(keys_.find("head.shells"), error.what());
+    }
+  }
+
+  void read_grid() {
+    out_.spacing_m = keys_.number("grid.spacing_mm") * kMillimetre;
+    out_.points_table = optional_path("grid.points");
+    out_.point_space = fold_case(keys_.text("grid.space")) == "head" ? PointSpace::head : PointSpace::mni;
+    out_.atlas = optional_path("grid.atlas");
+    out_.atlas_table = optional_path("grid.atlas_table");
+    if (out_.atlas.has_value() != out_.atlas_table.has_value())
+      keys_.problem(keys_.find(out_.atlas ? "grid.atlas" : "grid.atlas_table"),
+                    "'grid.atlas' and 'grid.atlas_table' go together.");
+  }
+
+  void read_noise() {
+    const std::string from = fold_case(keys_.text("noise.from"));
+    if (from == "residual") {
+      out_.noise.from = NoiseOptions::From::residual;
+      if (!keys_.has("noise.after_ms"))
+        keys_.problem(keys_.find("noise.from"), "'noise.after_ms' is missing: the latency from which what "
+                                                "is left counts as noise.");
+      out_.noise.after_s = keys_.number("noise.after_ms") * kMillisecond;
+    } else if (from == "table") {
+      out_.noise.from = NoiseOptions::From::table;
+      if (const auto table = optional_path("noise.table"))
+        out_.noise.table = *table;
+      else
+        keys_.problem(keys_.find("noise.from"), "'noise.table' is missing: the covariance to read.");
+    }
+    if (const auto window = keys_.numbers("noise.baseline_ms"); window.size() == 2) {
+      out_.noise.baseline_from_s = window[0] * kMillisecond;
+      out_.noise.baseline_to_s = window[1] * kMillisecond;
+    } else if (keys_.has("noise.baseline_ms")) {
+      keys_.problem(keys_.find("noise.baseline_ms"), "'noise.baseline_ms' needs two numbers.");
+    }
+    if (const auto* shrinkage = keys_.find("noise.shrinkage"); shrinkage && shrinkage->is_number())
+      out_.noise.shrinkage = shrinkage->number();
+  }
+
+  void read_inverse() {
+    for (const auto& method : keys_.texts("inverse.methods")) out_.methods.push_back(fold_case(method));
+    for (const auto& repeated : repeated_labels(out_.methods))
+      keys_.problem(keys_.find("inverse.methods"), fmt::format("method '{}' is there twice.", repeated));
+    if (out_.methods.empty())
+      keys_.problem(keys_.find("inverse.methods"), "'inverse.methods' is empty: name at least one.");
+    out_.depth_exponent = keys_.number("inverse.depth_exponent");
+    using Kind = RegularisationRule::Kind;
+    if (fold_case(keys_.text("inverse.regularisation")) == "l-curve")
+      out_.regularisation.kind = Kind::l_curve;
+    if (const auto* rule = keys_.find("inverse.regularisation"); rule && rule->is_table()) {
+      const auto& members = std::get<TomlValue::Table>(rule->value);
+      if (members.size() == 1 && members[0].second.is_number())
+        out_.regularisation = {members[0].first == "snr" ? Kind::snr : Kind::lambda,
+                               members[0].second.number()};
+    }
+    out_.lcmv_from_s = keys_.number("lcmv.from_ms") * kMillisecond;
+    if (keys_.has("lcmv.to_ms")) out_.lcmv_to_s = keys_.number("lcmv.to_ms") * kMillisecond;
+    out_.lcmv_table = optional_path("lcmv.table");
+    out_.lcmv.regularisation = keys_.number("lcmv.regularisation");
+    out_.lcmv.mirror_paired = keys_.flag("lcmv.mirror_paired");
+    const std::string output = fold_case(keys_.text("lcmv.output"));
+    out_.lcmv.output = output == "unit-gain"         ? LcmvOptions::Output::unit_gain
+                       : output == "activity-index" ? LcmvOptions::Output::activity_index
+                                                    : LcmvOptions::Output::unit_noise_gain;
+    out_.lcmv.orientation = fold_case(keys_.text("lcmv.orientation")) == "vector"
+                                ? LcmvOptions::Orientation::vector
+                                : LcmvOptions::Orientation::maximum_power;
+  }
+
+  void read_regions() {
+    for (const auto* entry : keys_.entries("regions")) {
+      RegionRequest request{text_of(*entry, "name"), texts_of(*entry, "gyri"), text_of(*entry, "lobe"),
+                            fold_case(text_of(*entry, "side"))};
+      if (request.gyri.empty() == request.lobe.empty())
+        keys_.problem(entry, fmt::format("region '{}' needs either gyri or a lobe.", request.name));
+      out_.regions.push_back(request);
+    }
+  }
+
+  KeyReader& keys_;
+  Experiment& out_;
+  fs::path folder_;
+};
+
+}  // namespace
+
+Experiment read_experiment(const std::filesystem::path& file) {
+  const TomlValue root = read_toml(file);
+  KeyReader keys(root, file.string());
+  Experiment experiment;
+  experiment.file = file;
+  Assembly(keys, experiment).run();
+  if (!keys.problems().empty()) {
+    std::string all = fmt::format("{} {} in the experiment file:", keys.problems().size(),
+                                  keys.problems().size() == 1 ? "problem" : "problems");
+    for (const auto& problem : keys.problems()) all += "\n  " + problem;
+    throw ExperimentError(all);
+  }
+  return experiment;
+}
+
+std::filesystem::path fill_pattern(const std::string& pattern, const std::string& participant,
+                                   const std::string& condition) {
+  return replace_all(replace_all(pattern, "{participant}", participant), "{condition}", condition);
+}
+
+std::vector<TimeWindow> windows_of(const Experiment& experiment, const std::string& contrast) {
+  std::vector<TimeWindow> windows;
+  for (const auto& window : experiment.windows)
+    if (window.contrasts.empty() || find_label(window.contrasts, contrast)) windows.push_back(window);
+  return windows;
+}
+
+}  // namespace headwater

@@ -1,0 +1,80 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/app/participant.hpp>
+
+#include <algorithm>
+
+#include <headwater/base/error.hpp>
+#include <headwater/base/table.hpp>
+
+namespace headwater {
+
+TrialCounts read_counts(const Experiment& experiment) {
+  if (!experiment.counts_table) return TrialCounts(experiment.trials_each);
+  return TrialCounts(read_table(*experiment.counts_table, "trial counts"));
+}
+
+ParticipantData load_participant(const Experiment& experiment, const std::string& participant,
+                                 const TrialCounts& counts, ForwardModels& forward_models) {
+  ParticipantData data;
+  data.name = participant;
+  for (const auto& condition : experiment.conditions) {
+    const auto path = fill_pattern(experiment.averages_pattern, participant, condition.name);
+    Average average = read_average(path, experiment.edits, experiment.unit);
+    average.condition = condition.name;
+    average.trials = counts.trials(participant, condition.name);
+    data.averages.push_back(std::move(average));
+    data.inputs.push_back(path.string());
+  }
+  make_consistent(data.averages, data.inputs);
+  const Labels& channels = data.averages[0].channels;
+  data.noise = experiment.noise.from == NoiseOptions::From::table
+                   ? read_noise_table(experiment.noise.table, channels, experiment.noise.shrinkage)
+                   : estimate_noise(data.averages, experiment.noise);
+  for (const auto& plan : experiment.contrasts)
+    data.contrasts.push_back(form_contrast(plan.name, plan.weights, data.averages, data.noise));
+  data.forward = forward_models.of(participant, channels);
+  return data;
+}
+
+ParticipantData mean_participant(const Experiment& experiment,
+                                 const std::vector<const ParticipantData*>& participants,
+                                 ForwardModels& forward_models) {
+  ParticipantData mean;
+  mean.name = kMeanName;
+  for (std::size_t k = 0; k < experiment.conditions.size(); ++k) {
+    std::vector<Average> averages;
+    for (const auto* participant : participants) averages.push_back(participant->averages[k]);
+    mean.averages.push_back(mean_average(averages));
+  }
+  std::vector<NoiseCovariance> noise;
+  for (const auto* participant : participants) noise.push_back(participant->noise);
+  for (std::size_t k = 0; k < experiment.contrasts.size(); ++k) {
+    std::vector<ContrastWaveform> contrasts;
+    for (const auto* participant : participants) contrasts.push_back(participant->contrasts[k]);
+    mean.contrasts.push_back(mean_contrast(contrasts, noise));
+  }
+  const Labels& channels = mean.averages[0].channels;
+  Montage montage{channels, Eigen::Matrix3Xd::Zero(3, static_cast<Eigen::Index>(channels.size()))};
+  SphereFit sphere = participants[0]->forward->sphere;
+  double radius = 0;
+  for (const auto* participant : participants) {
+    const Montage own = select_positions(participant->forward->montage, channels, participant->name);
+    montage.positions += own.positions / static_cast<double>(participants.size());
+    radius += participant->forward->sphere.radius / static_cast<double>(participants.size());
+  }
+  // Identical caps stay identical to the last bit, so that their lead field is shared.
+  if (participants[0]->forward->montage.labels == channels) {
+    const bool same = std::all_of(participants.begin(), participants.end(), [&](const auto* other) {
+      return other->forward == participants[0]->forward;
+    });
+    if (same) {
+      mean.forward = participants[0]->forward;
+      return mean;
+    }
+  }
+  sphere.radius = radius;
+  mean.forward = forward_models.of(montage, sphere);
+  return mean;
+}
+
+}  // namespace headwater
