@@ -1,16 +1,17 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // What tests of the signal wing share: invented averages, and the open recordings where present.
 #pragma once
+#include <headwater/base/random.hpp>
+#include <headwater/signal/average.hpp>
+
 #include <Eigen/Core>
+
 #include <algorithm>
 #include <cmath>
 #include <cstdlib>
 #include <filesystem>
 #include <string>
 #include <vector>
-
-#include <headwater/base/random.hpp>
-#include <headwater/signal/average.hpp>
 
 namespace headwater {
 
@@ -30,8 +31,8 @@ inline Eigen::MatrixXd invented_covariance(Eigen::Index channels) {
   return 1e-10 * covariance;
 }
 
-/// Averages that are noise only: at each sample factor * N(0, I) / sqrt(trials). Times from_s on, 4 ms
-/// apart.
+/// Averages that are noise only: at each sample factor * N(0, I) / sqrt(trials). Times from_s on, 4
+/// ms apart.
 inline std::vector<Average> noise_averages(RandomStream& random, const Eigen::MatrixXd& factor,
                                            const std::vector<double>& trials, Eigen::Index samples,
                                            double from_s) {
@@ -55,7 +56,9 @@ inline std::filesystem::path open_data() {
 }
 
 /// Edits that make sense of the two sets of averages, see the source notes in the open-data tests.
-inline ChannelEdits novel_sounds_edits() { return {{"IO1", "LO1", "LO2"}, {}, {}}; }
+inline ChannelEdits novel_sounds_edits() {
+  return {{"IO1", "LO1", "LO2"}, {}, {}};
+}
 inline ChannelEdits pictures_edits() {
   return {{"X", "Y", "nd", "CZ"},
           {{"AF1", "AF3"}, {"AF2", "AF4"}, {"PO1", "PO3"}, {"PO2", "PO4"}},

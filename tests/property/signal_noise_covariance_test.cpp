@@ -1,6 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Noise covariance against simulations of which the truth is known. Seeds are fixed; the bounds hold
-// for any seed with the stated probability.
+// Noise covariance against simulations of which the truth is known. Seeds are fixed; the bounds
+// hold for any seed with the stated probability.
+#include "reference/ledoit_wolf.hpp"
+#include "signal_support.hpp"
+
 #include <headwater/signal/noise_covariance.hpp>
 #include <headwater/signal/reference.hpp>
 
@@ -10,18 +13,17 @@
 
 #include <algorithm>
 
-#include "reference/ledoit_wolf.hpp"
-#include "signal_support.hpp"
-
 namespace headwater {
 namespace {
 
 using From = NoiseOptions::From;
 
-Eigen::MatrixXd cholesky(const Eigen::MatrixXd& covariance) { return covariance.llt().matrixL(); }
+Eigen::MatrixXd cholesky(const Eigen::MatrixXd& covariance) {
+  return covariance.llt().matrixL();
+}
 
-/// Mean over many draws lies within 4.5 of its own standard errors of the truth, entry by entry: for 15
-/// entries a correct estimator fails for one seed in 10 000.
+/// Mean over many draws lies within 4.5 of its own standard errors of the truth, entry by entry:
+/// for 15 entries a correct estimator fails for one seed in 10 000.
 template <typename Draw>
 void expect_unbiased(const Eigen::MatrixXd& truth, Draw&& draw) {
   constexpr int repeats = 1500;
@@ -61,12 +63,12 @@ TEST(SignalNoiseProperty, ResidualIsUnbiasedUnderSharedResponsesAndDrifts) {
     NoiseOptions options{From::residual, 0, 0, 0.4, {}, 0.0};
     expect_unbiased(basis.transpose() * covariance * basis, [&] {
       auto averages = noise_averages(random, factor, trials, 40, 0.35);
-      const Eigen::MatrixXd shared =
-          trials.size() > 1 ? Eigen::MatrixXd(1e-5 * random.normal_matrix(6, 40))
-                            : Eigen::MatrixXd::Zero(6, 40);
+      const Eigen::MatrixXd shared = trials.size() > 1
+                                         ? Eigen::MatrixXd(1e-5 * random.normal_matrix(6, 40))
+                                         : Eigen::MatrixXd::Zero(6, 40);
       for (Average& average : averages)
-        average.data_V += shared + 1e-5 * random.normal_matrix(6, 1) *
-                                       Eigen::RowVectorXd::LinSpaced(40, -1, 2);
+        average.data_V +=
+            shared + 1e-5 * random.normal_matrix(6, 1) * Eigen::RowVectorXd::LinSpaced(40, -1, 2);
       return estimate_noise(averages, options).single_trial_V2;
     });
   }
@@ -74,19 +76,21 @@ TEST(SignalNoiseProperty, ResidualIsUnbiasedUnderSharedResponsesAndDrifts) {
 
 TEST(SignalNoiseProperty, CountsDegreesOfFreedom) {
   RandomStream random(3, "degrees");
-  const auto averages = noise_averages(random, cholesky(invented_covariance(6)), {9, 4, 2}, 50, -0.1);
+  const auto averages =
+      noise_averages(random, cholesky(invented_covariance(6)), {9, 4, 2}, 50, -0.1);
   EXPECT_EQ(estimate_noise(averages, {}).samples, 3 * (25 - 1));
   EXPECT_EQ(estimate_noise(averages, {From::residual, 0, 0, 0, {}, {}}).samples, 2 * (25 - 2));
   EXPECT_EQ(estimate_noise({averages[0]}, {From::residual, 0, 0, 0, {}, {}}).samples, 25 - 2);
-  EXPECT_EQ(estimate_noise(averages, {From::baseline, -0.1, -0.08, 0, {}, {}}).samples, 3 * (6 - 1));
+  EXPECT_EQ(estimate_noise(averages, {From::baseline, -0.1, -0.08, 0, {}, {}}).samples,
+            3 * (6 - 1));
 }
 
-// Source: the paper's formulas, see the twin. Both sum p n numbers: rounding grows at most like that.
+// Source: the paper's formulas, see the twin. Both sum p n numbers: rounding grows at most like
+// that.
 TEST(SignalNoiseProperty, LedoitWolfWeightAgreesWithItsTwin) {
   RandomStream random(4, "twin");
   for (const auto& [p, n] : {std::pair{2, 3}, {5, 200}, {30, 25}, {63, 100}, {7, 1}}) {
-    const Eigen::MatrixXd samples =
-        cholesky(invented_covariance(p)) * random.normal_matrix(p, n);
+    const Eigen::MatrixXd samples = cholesky(invented_covariance(p)) * random.normal_matrix(p, n);
     EXPECT_NEAR(ledoit_wolf_weight(samples, n, 1), reference::ledoit_wolf_weight(samples),
                 1e-15 * p * n + 1e-14)
         << p << " by " << n;
@@ -120,8 +124,8 @@ Eigen::MatrixXd autoregressive(RandomStream& random, Eigen::Index p, Eigen::Inde
   return x;
 }
 
-// For the first-order process rho_k = phi^k, so tau tends to (1 + phi^2)/(1 - phi^2), and the variance
-// of S is larger by that factor (Bartlett 1935 J R Stat Soc 98:536).
+// For the first-order process rho_k = phi^k, so tau tends to (1 + phi^2)/(1 - phi^2), and the
+// variance of S is larger by that factor (Bartlett 1935 J R Stat Soc 98:536).
 TEST(SignalNoiseProperty, CorrelatedSamplesCountForLess) {
   const double phi = 0.6, tau = (1 + phi * phi) / (1 - phi * phi);
   RandomStream random(6, "correlated");
@@ -196,8 +200,7 @@ TEST_P(SignalNoiseInvariance, ScalesWithTheSquareOfTheUnit) {
 }
 
 INSTANTIATE_TEST_SUITE_P(Sources, SignalNoiseInvariance,
-                         testing::Values(From::baseline, From::residual),
-                         [](const auto& tested) {
+                         testing::Values(From::baseline, From::residual), [](const auto& tested) {
                            return tested.param == From::baseline ? "Baseline" : "Residual";
                          });
 

@@ -1,16 +1,16 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "base_scratch.hpp"
+
 #include <headwater/base/atomic_file.hpp>
 #include <headwater/base/error.hpp>
 #include <headwater/model/head.hpp>
 #include <headwater/signal/electrodes.hpp>
 #include <headwater/signal/standard_cap.hpp>
 
+#include <fmt/core.h>
 #include <gtest/gtest.h>
 
 #include <algorithm>
-#include <fmt/core.h>
-
-#include "base_scratch.hpp"
 
 namespace headwater {
 namespace {
@@ -35,7 +35,8 @@ TEST(SignalElectrodes, PlansDropRenameAndZero) {
   file.push_back("AF1");
   const ChannelPlan plan =
       plan_channels(file, {{"x", "O2"}, {{"AF1", "AF3"}, {"Fp1", "Fpz"}}, {"Cz"}}, "a.tsv");
-  EXPECT_EQ(plan.labels, (Labels{"Fpz", "Fp2", "F3", "F4", "C3", "C4", "P3", "P4", "O1", "AF3", "Cz"}));
+  EXPECT_EQ(plan.labels,
+            (Labels{"Fpz", "Fp2", "F3", "F4", "C3", "C4", "P3", "P4", "O1", "AF3", "Cz"}));
   EXPECT_EQ(plan.source, (std::vector<Eigen::Index>{1, 2, 3, 4, 5, 6, 7, 8, 9, 11, -1}));
 }
 
@@ -66,7 +67,8 @@ TEST(SignalElectrodes, ReadsMillimetresByColumnName) {
   const Montage montage = read_positions(path, PositionSpace::head);
   EXPECT_EQ(montage.labels, kTen);
   // Ten digits are written.
-  EXPECT_LT((montage.positions - standard_montage(kTen, 0.09).positions).cwiseAbs().maxCoeff(), 1e-10);
+  EXPECT_LT((montage.positions - standard_montage(kTen, 0.09).positions).cwiseAbs().maxCoeff(),
+            1e-10);
 }
 
 TEST(SignalElectrodes, SubtractsTheHeadCentreInMniSpace) {
@@ -74,7 +76,8 @@ TEST(SignalElectrodes, SubtractsTheHeadCentreInMniSpace) {
   const auto path = scratch.folder / "cap.tsv";
   write_file(path, positions_text("name\tx_mm\ty_mm\tz_mm", 1e3, kTen, kHeadCentreMni));
   const Montage montage = read_positions(path, PositionSpace::mni);
-  EXPECT_LT((montage.positions - standard_montage(kTen, 0.09).positions).cwiseAbs().maxCoeff(), 1e-10);
+  EXPECT_LT((montage.positions - standard_montage(kTen, 0.09).positions).cwiseAbs().maxCoeff(),
+            1e-10);
 }
 
 TEST(SignalElectrodes, ReadsBidsTablesInEveryUnit) {
@@ -84,7 +87,8 @@ TEST(SignalElectrodes, ReadsBidsTablesInEveryUnit) {
       const auto path = scratch.folder / "sub-01_electrodes.tsv";
       write_file(path, "\xef\xbb\xbf" + positions_text("name\tx\ty\tz", per_metre, kTen) +
                            "Cz\tn/a\tn/a\tn/a\n");
-      write_file(scratch.folder / side_file, fmt::format("{{\"EEGCoordinateUnits\": \"{}\"}}", unit));
+      write_file(scratch.folder / side_file,
+                 fmt::format("{{\"EEGCoordinateUnits\": \"{}\"}}", unit));
       const Montage montage = read_positions(path, PositionSpace::head);
       EXPECT_EQ(montage.labels, kTen);  // the row without a position is left out
       EXPECT_LT((montage.positions - standard_montage(kTen, 0.09).positions).cwiseAbs().maxCoeff(),
@@ -112,8 +116,8 @@ TEST(SignalElectrodes, FitsTheSphereItWasMadeOf) {
 }
 
 TEST(SignalElectrodes, NeighboursAreThoseNextOnTheCap) {
-  const Labels labels{"Fp1", "Fpz", "Fp2", "F7", "F3", "Fz", "F4", "F8", "T7", "C3", "Cz", "C4",
-                      "T8",  "P7",  "P3",  "Pz", "P4", "P8", "O1", "Oz", "O2"};
+  const Labels labels{"Fp1", "Fpz", "Fp2", "F7", "F3", "Fz", "F4", "F8", "T7", "C3", "Cz",
+                      "C4",  "T8",  "P7",  "P3", "Pz", "P4", "P8", "O1", "Oz", "O2"};
   const auto neighbours = channel_neighbours(standard_montage(labels, 0.092));
   ASSERT_EQ(neighbours.size(), labels.size());
   const auto linked = [&](const char* a, const char* b) {

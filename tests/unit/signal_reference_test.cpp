@@ -1,11 +1,11 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "base_scratch.hpp"
+
 #include <headwater/base/error.hpp>
 #include <headwater/base/random.hpp>
 #include <headwater/signal/reference.hpp>
 
 #include <gtest/gtest.h>
-
-#include "base_scratch.hpp"
 
 namespace headwater {
 namespace {
@@ -47,8 +47,9 @@ TEST(SignalReference, BasisSpansWhatNoReferenceChanges) {
 }
 
 TEST(SignalReference, ListsEveryUnknownName) {
-  const std::string message =
-      message_of<InputError>([] { channel_reference(kLabels, {"A1", "Cz", "A2"}); });
+  const std::string message = message_of<InputError>([] {
+    channel_reference(kLabels, {"A1", "Cz", "A2"});
+  });
   EXPECT_NE(message.find("A1 and A2"), std::string::npos) << message;
   EXPECT_NE(message.find("Fz, M1, Cz and M2"), std::string::npos) << message;
   EXPECT_THROW(channel_reference(kLabels, {}), InputError);

@@ -13,10 +13,10 @@ TEST(SignalStandardCap, KnowsEveryNameOnce) {
   EXPECT_EQ(names.size(), 315u);  // 15 rows of 19 + 2 columns less 2, and 6 rows of 5
   EXPECT_EQ(std::set<std::string>(names.begin(), names.end()).size(), names.size());
   for (const char* name :
-       {"Nz", "N1h", "NFp2", "Fp1h", "Fpz", "AFp7", "AFp10h", "AF1", "AFF5h", "F9", "FFT7h", "FFC5h",
-        "FT7", "FT10", "FC5", "FTT8", "FCC4h", "T7h", "T9", "C5h", "C1", "TTP9h", "CCP3", "TP8",
-        "TP10", "CP6h", "TPP7", "CPP1h", "P9", "PPO10h", "PO1", "PO7", "POO3", "Oz", "O2h", "OI1",
-        "OIz", "Iz", "I2h"})
+       {"Nz",    "N1h",   "NFp2", "Fp1h", "Fpz",  "AFp7", "AFp10h", "AF1",   "AFF5h", "F9",
+        "FFT7h", "FFC5h", "FT7",  "FT10", "FC5",  "FTT8", "FCC4h",  "T7h",   "T9",    "C5h",
+        "C1",    "TTP9h", "CCP3", "TP8",  "TP10", "CP6h", "TPP7",   "CPP1h", "P9",    "PPO10h",
+        "PO1",   "PO7",   "POO3", "Oz",   "O2h",  "OI1",  "OIz",    "Iz",    "I2h"})
     EXPECT_EQ(standard_name(name), name);
   for (const char* name : {"C7", "FC7", "CP9h", "T5h", "M1", "A2", "LPA", "nd", "", "Cz "})
     EXPECT_EQ(standard_name(name), "") << name;
