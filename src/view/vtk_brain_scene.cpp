@@ -63,7 +63,7 @@ vtkSmartPointer<vtkPolyData> coloured_surface(const SurfaceMesh& mesh,
 void add_light(vtkRenderer* renderer) {
   vtkNew<vtkLight> light;
   light->SetLightTypeToCameraLight();
-  light->SetPosition(0, 0.45, 1);
+  light->SetPosition(0, 0.3, 1);
   light->SetFocalPoint(0, 0, 0);
   renderer->SetAutomaticLightCreation(false);
   renderer->AddLight(light);

@@ -76,7 +76,7 @@ std::vector<std::string> Fonts::wrapped(const std::string& text, const TextStyle
   std::vector<std::string> lines;
   std::istringstream words(text);
   std::string word, line;
-  while (words >> word) {
+  while (std::getline(words, word, ' ')) {  // two spaces give an empty word, and so stay two
     const std::string longer = line.empty() ? word : line + " " + word;
     if (!line.empty() && width(longer, style) > width_px) {
       lines.push_back(line);

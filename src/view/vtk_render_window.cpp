@@ -7,6 +7,7 @@
 #include <EGL/egl.h>
 #include <EGL/eglext.h>
 #include <vtkObjectFactory.h>
+#include <vtkOpenGLState.h>
 
 #include <array>
 #include <cstdlib>
@@ -58,7 +59,7 @@ EGLDisplay shared_display() {
 
 }  // namespace
 
-vtkStandardNewMacro(EglWindow);
+vtkStandardNewMacro(EglWindow)
 
 EglWindow::EglWindow() {
   SetOffScreenRendering(1);
@@ -100,7 +101,9 @@ std::string EglWindow::open() {
   if (!IsCurrent()) return "the OpenGL context cannot be made current";
   SetReadyForRendering(true);
   OpenGLInit();
-  return Initialized ? std::string() : "the functions of OpenGL cannot be loaded";
+  if (!Initialized) return "the functions of OpenGL cannot be loaded";
+  GetState()->vtkglDepthFunc(GL_LEQUAL);  // flat shapes share one depth: the later one covers
+  return {};
 }
 
 void EglWindow::Initialize() { open(); }

@@ -12,7 +12,7 @@ namespace headwater {
 class EglWindow : public vtkGenericOpenGLRenderWindow {
  public:
   static EglWindow* New();
-  vtkTypeMacro(EglWindow, vtkGenericOpenGLRenderWindow);
+  vtkTypeMacro(EglWindow, vtkGenericOpenGLRenderWindow)
   EglWindow(const EglWindow&) = delete;
   EglWindow& operator=(const EglWindow&) = delete;
 

@@ -33,6 +33,7 @@ namespace {
 constexpr Rgb kInk{0.1, 0.1, 0.1}, kGrey{0.33, 0.33, 0.33};
 constexpr int kHalvings = 6;          // 1.4 mm between vertices
 constexpr double kLineHeight = 1.38;  // of the font size
+constexpr double kCaptionGap = 0.25;  // between captions, of the text's size
 constexpr double kRuler_mm = 50;
 
 /// Quantity and unit in the trade's manner: "scalp potential (uV)".
@@ -48,10 +49,10 @@ std::vector<std::string> own_notes(const SourcePicture& p) {
       "the surface; deeper sources are not painted.",
       0.75 * p.spacing_mm, kShownDepth_mm));
   if (!p.marks.empty())
-    notes.back() += fmt::format(
-        " Marks are seen through the brain: filled, at most {:.0f} mm below the surface seen; hollow, "
+    notes.push_back(fmt::format(
+        "Marks are seen through the brain: filled, at most {:.0f} mm below the surface seen; hollow, "
         "deeper or behind; diamonds, mirrored pair.",
-        kShownDepth_mm);
+        kShownDepth_mm));
   Eigen::Index largest = 0;
   const double value = p.values.maxCoeff(&largest);
   const double depth = depth_below_hull_mm(p.points_mni_mm.col(largest));
@@ -67,14 +68,18 @@ std::string full_caption(const PictureMark& mark) {
   const double depth = depth_below_hull_mm(mark.mni_mm);
   std::string text = mark.caption.empty() ? mark.label : mark.caption;
   if (depth > kShownDepth_mm) text += fmt::format(" ({:.0f} mm deep)", depth);
+  // A unit stays on the line of its number.
+  for (const std::string unit : {" mm", " ms"})
+    for (auto at = text.find(unit); at != std::string::npos; at = text.find(unit, at))
+      text.replace(at, 1, "\u00a0");
   return text;
 }
 
 struct Styles {
   explicit Styles(double w)
       : title{w / 44, true, kInk}, subtitle{w / 58, false, kGrey}, text{w / 56, false, kInk},
-        heading{w / 56, true, kInk}, note{w / 72, false, kGrey} {}
-  TextStyle title, subtitle, text, heading, note;
+        heading{w / 56, true, kInk}, caption{w / 63, false, kInk}, note{w / 72, false, kGrey} {}
+  TextStyle title, subtitle, text, heading, caption, note;
 };
 
 /// Lines of one style, already broken.
@@ -98,7 +103,7 @@ struct Layout {
   Block title, subtitle;
   std::vector<Block> captions, notes;
   std::array<BrainPanel, 4> panels;
-  double body_y, bar_y, scalp_y, scalp_width, captions_y, notes_y, height;
+  double body_y, second_row_y, bar_y, scalp_y, scalp_width, captions_y, captions_end, notes_y, height;
 };
 
 class Composer {
@@ -147,7 +152,7 @@ class Composer {
     const double w = p_.width_px, margin = w / 44;
     at_.width = w;
     at_.margin = margin;
-    at_.left_width = 0.635 * w;
+    at_.left_width = 0.575 * w;
     at_.right_x = margin + at_.left_width + 1.5 * margin;
     at_.right_width = w - margin - at_.right_x;
     at_.title = {fonts_.wrapped(p_.title, styles_.title, w - 2 * margin), styles_.title};
@@ -156,7 +161,7 @@ class Composer {
     at_.body_y = margin + at_.title.height() + at_.subtitle.height() + margin;
     measure_brains();
     measure_right_column();
-    at_.notes_y = std::max(at_.bar_y + colour_bar_height(styles_.text), at_.captions_y) + margin;
+    at_.notes_y = std::max(at_.bar_y + colour_bar_height(styles_.text), at_.captions_end) + margin;
     at_.height = at_.notes_y;
     for (const auto& texts : {p_.notes, own_notes(p_)})
       for (const auto& note : texts) {
@@ -173,13 +178,14 @@ class Composer {
     at_.px_per_mm = (column - gap - 2 * letter) / scene_.extent_mm(sides[kLeft]).x();
     double y = at_.body_y;
     for (const std::size_t row : {std::size_t{0}, std::size_t{2}}) {
+      (row == 0 ? at_.body_y : at_.second_row_y) = y;
       double tallest = 0;
       for (const std::size_t k : {row, row + 1})
         tallest = std::max(tallest, at_.px_per_mm * scene_.extent_mm(sides[k]).y() +
                                         2 * (*sides[k].top_letter ? letter : 0));
       const double middle = y + kLineHeight * text_px() + tallest / 2;
       for (const std::size_t k : {row, row + 1}) {
-        const Eigen::Vector2d size = at_.px_per_mm * scene_.extent_mm(sides[k]).array() + 4;
+        const Eigen::Vector2d size = (at_.px_per_mm * scene_.extent_mm(sides[k])).array() + 4;
         at_.panels[k] = {{at_.margin + (k == row ? 0.5 : 1.5) * column, middle}, size,
                          at_.px_per_mm};
       }
@@ -192,30 +198,27 @@ class Composer {
     double y = at_.body_y;
     if (has_scalp()) {
       at_.scalp_y = y + kLineHeight * text_px();
-      at_.scalp_width = at_.right_width;
+      at_.scalp_width = 0.82 * at_.right_width;
       y = at_.scalp_y + at_.scalp_width + text_px() + colour_bar_height(styles_.text);
     }
     y += text_px();
-    at_.captions_y = y;
+    at_.captions_y = at_.captions_end = y;
     if (p_.marks.empty()) return;
     y += kLineHeight * text_px();
     for (const auto& mark : p_.marks) {
       at_.captions.push_back({fonts_.wrapped(full_caption(mark), styles_.text,
                                              at_.right_width - 1.4 * text_px()),
-                              styles_.text});
-      y += at_.captions.back().height() + 0.35 * text_px();
+                              styles_.caption});
+      y += at_.captions.back().height() + kCaptionGap * text_px();
     }
-    std::swap(y, at_.captions_y);  // until here it was where the list begins
-    captions_top_ = y;
+    at_.captions_end = y;
   }
 
   void draw_side(Canvas& canvas, std::size_t k) {
     const BrainSide& side = brain_sides()[k];
     const BrainPanel& panel = at_.panels[k];
-    const double heading_y = at_.body_y + 0.5 * kLineHeight * text_px();
-    const double row_y = k < kTop ? heading_y
-                                  : heading_y + row_two_offset();
-    canvas.text({panel.centre.x(), row_y}, side.name, styles_.heading, Align::centre);
+    const double row_y = k < kTop ? at_.body_y : at_.second_row_y;
+    canvas.text({panel.centre.x(), row_y + 0.5 * kLineHeight * text_px()}, side.name, styles_.heading, Align::centre);
     const double across = panel.size.x() / 2 + 0.75 * text_px();
     const double along = panel.size.y() / 2 + 0.65 * text_px();
     const auto letter = [&](double x, double y, const char* text) {
@@ -226,13 +229,6 @@ class Composer {
     letter(0, -along, side.top_letter);
     letter(0, along, side.bottom_letter);
     scene_.draw_marks(canvas, side, panel, p_.marks, styles_.heading);
-  }
-
-  double row_two_offset() const {
-    const double first_row = at_.panels[kLeft].px_per_mm *
-                             std::max(scene_.extent_mm(brain_sides()[kLeft]).y(),
-                                      scene_.extent_mm(brain_sides()[kRight]).y());
-    return kLineHeight * text_px() + first_row + text_px();
   }
 
   /// A length to judge distances by, under the view from the front.
@@ -254,27 +250,29 @@ class Composer {
                     styles_.text);
     if (!has_scalp()) return;
     const double middle = at_.right_x + at_.right_width / 2;
-    canvas.text({middle, at_.body_y + 0.5 * kLineHeight * text_px()}, "scalp", styles_.heading,
+    canvas.text({middle, at_.body_y + 0.5 * kLineHeight * text_px()}, "scalp, from above", styles_.heading,
                 Align::centre);
     draw_scalp_map(canvas, p_, {middle, at_.scalp_y + at_.scalp_width / 2}, at_.scalp_width,
                    styles_.text);
-    const ColourBar scalp{with_unit("potential", "\u00b5V"), scalp_scale(p_), true, balance_colour};
-    draw_colour_bar(canvas, scalp, middle - 0.4 * at_.right_width,
-                    at_.scalp_y + at_.scalp_width + text_px(), 0.8 * at_.right_width,
-                    styles_.text);
+    const TickScale scale = scalp_scale(p_);
+    const ColourBar scalp{
+        fmt::format("potential (\u00b5V), lines every {:.3g} \u00b5V", scale.step / 2), scale, true,
+        balance_colour};
+    draw_colour_bar(canvas, scalp, middle - at_.scalp_width / 2,
+                    at_.scalp_y + at_.scalp_width + text_px(), at_.scalp_width, styles_.text);
   }
 
   void draw_lists(Canvas& canvas) {
-    double y = captions_top_;
+    double y = at_.captions_y;
     if (!p_.marks.empty())
       canvas.text({at_.right_x, y + 0.5 * kLineHeight * text_px()}, "marks", styles_.heading);
     y += kLineHeight * text_px();
     for (std::size_t k = 0; k < at_.captions.size(); ++k) {
       const PictureMark& mark = p_.marks[k];
-      draw_mark(canvas, {at_.right_x + 0.5 * text_px(), y + 0.5 * kLineHeight * text_px()},
+      draw_mark(canvas, {at_.right_x + 0.5 * text_px(), y + 0.5 * kLineHeight * styles_.caption.size_px},
                 0.33 * text_px(), mark.pair, depth_below_hull_mm(mark.mni_mm) <= kShownDepth_mm);
       draw_block(canvas, at_.captions[k], at_.right_x + 1.4 * text_px(), y);
-      y += at_.captions[k].height() + 0.35 * text_px();
+      y += at_.captions[k].height() + kCaptionGap * text_px();
     }
     y = at_.notes_y;
     for (const Block& note : at_.notes) {
@@ -289,7 +287,6 @@ class Composer {
   TickScale scale_;
   BrainScene scene_;
   Layout at_{};
-  double captions_top_ = 0;
 };
 
 /// The rendered pixels averaged to the picture's own size.
