@@ -1,17 +1,19 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "view/brain_surface.hpp"
 
+#include <headwater/base/parallel.hpp>
+#include <headwater/base/units.hpp>
+#include <headwater/model/head.hpp>
+#include <headwater/model/template_brain.hpp>
+
 #include <Eigen/Geometry>
+
 #include <algorithm>
 #include <array>
 #include <cmath>
 #include <map>
 #include <utility>
 #include <vector>
-
-#include <headwater/base/units.hpp>
-#include <headwater/model/head.hpp>
-#include <headwater/model/template_brain.hpp>
 
 namespace headwater {
 namespace {
@@ -86,7 +88,8 @@ class LocalMean {
       : points_(points), values_(values), sigma_(0.75 * spacing), reach_(2.5 * spacing) {}
 
   /// The points that any place on the segment can reach.
-  std::vector<Eigen::Index> near_segment(const Eigen::Vector3d& from, const Eigen::Vector3d& way) const {
+  std::vector<Eigen::Index> near_segment(const Eigen::Vector3d& from,
+                                         const Eigen::Vector3d& way) const {
     std::vector<Eigen::Index> result;
     const double length2 = way.squaredNorm();
     for (Eigen::Index i = 0; i < points_.cols(); ++i) {
@@ -143,14 +146,14 @@ Eigen::VectorXd painted_values(const SurfaceMesh& surface, const Eigen::Matrix3X
   const Eigen::VectorXd shown_values = values(shown);
   const LocalMean mean(shown_points, shown_values, spacing_mm);
   Eigen::VectorXd painted = Eigen::VectorXd::Zero(surface.vertices_mm.cols());
-  for (Eigen::Index v = 0; v < painted.size(); ++v) {
+  parallel_for(static_cast<std::size_t>(painted.size()), 0, [&](std::size_t item) {
+    const auto v = static_cast<Eigen::Index>(item);
     const Eigen::Vector3d vertex = surface.vertices_mm.col(v);
     const Eigen::Vector3d way = (kCentre_mm - vertex).normalized() * kShownDepth_mm;
     const auto candidates = mean.near_segment(vertex, way);
     for (double depth = 0; depth <= kShownDepth_mm; depth += kDepthStep_mm)
-      painted(v) =
-          std::max(painted(v), mean.at(vertex + depth / kShownDepth_mm * way, candidates));
-  }
+      painted(v) = std::max(painted(v), mean.at(vertex + depth / kShownDepth_mm * way, candidates));
+  });
   return painted;
 }
 

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Each scale is a quadratic Bezier curve in Oklab, walked at constant speed: the length of the curve up
-// to a parameter is tabulated and inverted, so that equal steps of t are equal distances in the space.
-// The lightness of the three control points falls, hence so does that of the curve.
+// Each scale is a quadratic Bezier curve in Oklab, walked at constant speed: the length of the
+// curve up to a parameter is tabulated and inverted, so that equal steps of t are equal distances
+// in the space. The lightness of the three control points falls, hence so does that of the curve.
 #include "view/colour.hpp"
 
 #include <algorithm>
@@ -22,7 +22,8 @@ class Curve {
     Oklab before = from;
     for (int k = 1; k <= kSteps; ++k) {
       const Oklab here = bezier(static_cast<double>(k) / kSteps);
-      length_[k] = length_[k - 1] + std::hypot(here.L - before.L, here.a - before.a, here.b - before.b);
+      length_[k] =
+          length_[k - 1] + std::hypot(here.L - before.L, here.a - before.a, here.b - before.b);
       before = here;
     }
   }
@@ -54,7 +55,9 @@ double decoded(double value) {
   return value <= 0.04045 ? value / 12.92 : std::pow((value + 0.055) / 1.055, 2.4);
 }
 
-double cube(double x) { return x * x * x; }
+double cube(double x) {
+  return x * x * x;
+}
 
 }  // namespace
 
@@ -84,8 +87,8 @@ Rgb amplitude_colour(double t) {
 }
 
 Rgb balance_colour(double t) {
-  // The two branches have slightly different speeds; both take the mean lightness, so that +t and -t
-  // differ in hue and chroma only.
+  // The two branches have slightly different speeds; both take the mean lightness, so that +t and
+  // -t differ in hue and chroma only.
   static const Curve below({0.965, 0, 0}, {0.75, -0.05, -0.10}, {0.40, -0.03, -0.13});
   static const Curve above({0.965, 0, 0}, {0.75, 0.06, 0.13}, {0.40, 0.075, 0.075});
   const double size = std::min(std::abs(t), 1.0);

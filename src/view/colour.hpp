@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The two colour scales of the pictures, made by formula in a perceptual space, so that equal steps of
-// the value look like equal steps of colour and the order survives grey print and colour blindness.
+// The two colour scales of the pictures, made by formula in a perceptual space, so that equal steps
+// of the value look like equal steps of colour and the order survives grey print and colour
+// blindness.
 //
 //   amplitude_colour  zero = warm white, largest = deep violet, by way of apricot: lightness falls
 //                     all the way.

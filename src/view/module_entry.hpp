@@ -2,9 +2,9 @@
 // The one door between the library and the drawing module that it loads on first use. No exception
 // passes through it: trouble comes back as text.
 #pragma once
-#include <string>
-
 #include <headwater/view/source_picture.hpp>
+
+#include <string>
 
 namespace headwater {
 

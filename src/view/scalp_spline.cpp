@@ -1,11 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "view/scalp_spline.hpp"
 
+#include <headwater/base/units.hpp>
+
 #include <Eigen/LU>
+
 #include <algorithm>
 #include <cmath>
-
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 namespace {
@@ -34,7 +35,8 @@ ScalpSpline::ScalpSpline(const Eigen::Matrix3Xd& directions, const Eigen::Vector
   system(count, count) = 0;
   for (Eigen::Index i = 0; i < count; ++i)
     for (Eigen::Index j = 0; j < count; ++j)
-      system(i, j) = spline_kernel(std::clamp(electrodes_.col(i).dot(electrodes_.col(j)), -1.0, 1.0));
+      system(i, j) =
+          spline_kernel(std::clamp(electrodes_.col(i).dot(electrodes_.col(j)), -1.0, 1.0));
   Eigen::VectorXd right = Eigen::VectorXd::Zero(count + 1);
   right.head(count) = values;
   weights_ = system.partialPivLu().solve(right);

@@ -1,19 +1,21 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Checks the input, loads the drawing module, writes what it returns. The module is looked for beside
-// the library file itself, so that a built tree, an installed package and a moved one all work.
+// Checks the input, loads the drawing module, writes what it returns. The module is looked for
+// beside the library file itself, so that a built tree, an installed package and a moved one all
+// work.
+#include "view/module_entry.hpp"
+
+#include <headwater/base/atomic_file.hpp>
+#include <headwater/base/error.hpp>
+#include <headwater/base/version.hpp>
 #include <headwater/view/source_picture.hpp>
 
 #include <dlfcn.h>
 #include <fmt/core.h>
 
+#include <cmath>
 #include <cstdlib>
 #include <mutex>
-
-#include <headwater/base/atomic_file.hpp>
-#include <headwater/base/error.hpp>
-#include <headwater/base/version.hpp>
-
-#include "view/module_entry.hpp"
+#include <utility>
 
 namespace headwater {
 namespace {
@@ -94,7 +96,8 @@ void check(const SourcePicture& picture) {
 std::filesystem::path library_folder() {
   Dl_info info{};
   if (dladdr(reinterpret_cast<const void*>(&write_source_picture), &info) == 0 || !info.dli_fname)
-    throw ResourceError("The library's own file cannot be found, so neither can the drawing module.");
+    throw ResourceError(
+        "The library's own file cannot be found, so neither can the drawing module.");
   return std::filesystem::absolute(info.dli_fname).parent_path();
 }
 
@@ -104,24 +107,23 @@ std::filesystem::path module_path() {
   std::error_code ignored;
   for (const auto& candidate : {folder / kModuleFile, folder / "headwater" / kModuleFile})
     if (std::filesystem::exists(candidate, ignored)) return candidate;
-  throw ResourceError(
-      fmt::format("Pictures need the drawing module {0}, which is neither in {1} nor in {1}/headwater. "
-                  "Build or install it (it needs the packages libvtk9-dev, libglew-dev and "
-                  "libegl-dev), or name it in HEADWATER_VIEW_MODULE.",
-                  kModuleFile, folder.string()));
+  throw ResourceError(fmt::format(
+      "Pictures need the drawing module {0}, which is neither in {1} nor in {1}/headwater. "
+      "Build or install it (it needs the packages libvtk9-dev, libglew-dev and "
+      "libegl-dev), or name it in HEADWATER_VIEW_MODULE.",
+      kModuleFile, folder.string()));
 }
 
-/// The module stays loaded: VTK does not survive being unloaded. A failure is tried again next time.
+/// The module is never closed: VTK does not survive being unloaded, and opening it again is cheap.
 DrawingEntry* drawing_entry() {
-  static DrawingEntry* entry = nullptr;
-  if (entry) return entry;
   const auto path = module_path();
   void* module = dlopen(path.c_str(), RTLD_NOW | RTLD_LOCAL);
   if (!module)
-    throw ResourceError(fmt::format("The drawing module cannot be loaded: {}. Install the packages "
-                                    "libvtk9.1, libglew2.2 and libegl1.",
-                                    dlerror()));
-  entry = reinterpret_cast<DrawingEntry*>(dlsym(module, kDrawingEntry));
+    throw ResourceError(
+        fmt::format("The drawing module cannot be loaded: {}. Install the packages "
+                    "libvtk9.1, libglew2.2 and libegl1.",
+                    dlerror()));
+  auto* entry = reinterpret_cast<DrawingEntry*>(dlsym(module, kDrawingEntry));
   if (!entry)
     throw ResourceError(fmt::format("{} is not the drawing module of Headwater: it has no {}.",
                                     path.string(), kDrawingEntry));

@@ -1,6 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "view/vtk_brain_scene.hpp"
 
+#include <headwater/base/units.hpp>
+
+#include <Eigen/Geometry>
 #include <vtkActor.h>
 #include <vtkCamera.h>
 #include <vtkCellArray.h>
@@ -11,12 +14,9 @@
 #include <vtkProperty.h>
 #include <vtkUnsignedCharArray.h>
 
-#include <Eigen/Geometry>
 #include <cmath>
 #include <limits>
 #include <utility>
-
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 namespace {
@@ -75,12 +75,18 @@ struct DrawnMark {
   bool filled;
 };
 
-/// Beside the mark, where the least of other marks and of labels already placed is covered; at equal
-/// cover the first in the order below.
+/// Beside the mark, where the least of other marks and of labels already placed is covered; at
+/// equal cover the first in the order below.
 Eigen::Vector2d label_place(const DrawnMark& mark, const std::vector<DrawnMark>& all,
                             const Canvas::Points& labels, double reach) {
-  static const std::array<Eigen::Vector2d, 8> ways{{{0.75, -0.75}, {-0.75, -0.75}, {0.75, 0.75},
-                                                    {-0.75, 0.75}, {1, 0}, {-1, 0}, {0, -1}, {0, 1}}};
+  static const std::array<Eigen::Vector2d, 8> ways{{{0.75, -0.75},
+                                                    {-0.75, -0.75},
+                                                    {0.75, 0.75},
+                                                    {-0.75, 0.75},
+                                                    {1, 0},
+                                                    {-1, 0},
+                                                    {0, -1},
+                                                    {0, 1}}};
   Eigen::Vector2d best = mark.place;
   double least = std::numeric_limits<double>::infinity();
   for (const auto& way : ways) {

@@ -3,20 +3,20 @@
 //
 // Marks are drawn flat over the brain, hence seen through it. Filled: at most 25 mm of brain lie
 // between the mark and the viewer. Hollow: it lies deeper, or towards the far side. A view from the
-// left or right shows the marks of its own hemisphere and of the midline only: a mirrored pair would
-// else fall on one place.
+// left or right shows the marks of its own hemisphere and of the midline only: a mirrored pair
+// would else fall on one place.
 #pragma once
+#include "view/axis_ticks.hpp"
+#include "view/brain_surface.hpp"
+#include "view/vtk_canvas.hpp"
+
+#include <headwater/view/source_picture.hpp>
+
 #include <vtkNew.h>
 #include <vtkPolyDataMapper.h>
 
 #include <array>
 #include <string>
-
-#include <headwater/view/source_picture.hpp>
-
-#include "view/axis_ticks.hpp"
-#include "view/brain_surface.hpp"
-#include "view/vtk_canvas.hpp"
 
 namespace headwater {
 
@@ -54,6 +54,7 @@ class BrainScene {
 };
 
 /// The sign of a mark: disc, or diamond for half of a pair; filled or hollow.
-void draw_mark(Canvas& canvas, const Eigen::Vector2d& centre, double radius, bool pair, bool filled);
+void draw_mark(Canvas& canvas, const Eigen::Vector2d& centre, double radius, bool pair,
+               bool filled);
 
 }  // namespace headwater

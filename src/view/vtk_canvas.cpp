@@ -1,6 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "view/vtk_canvas.hpp"
 
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
+
 #include <fmt/core.h>
 #include <vtkActor2D.h>
 #include <vtkCellArray.h>
@@ -18,9 +21,6 @@
 #include <cstdlib>
 #include <sstream>
 
-#include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
-
 namespace headwater {
 namespace {
 
@@ -35,9 +35,9 @@ void set_style(vtkTextProperty* property, const Fonts& fonts, const TextStyle& s
 
 std::filesystem::path font_folder() {
   constexpr const char* file = "DejaVuSans.ttf";
-  std::vector<std::filesystem::path> folders{
-      "/usr/share/fonts/truetype/dejavu", "/usr/share/fonts/dejavu-sans-fonts",
-      "/usr/share/fonts/TTF", "/usr/share/fonts/dejavu"};
+  std::vector<std::filesystem::path> folders{"/usr/share/fonts/truetype/dejavu",
+                                             "/usr/share/fonts/dejavu-sans-fonts",
+                                             "/usr/share/fonts/TTF", "/usr/share/fonts/dejavu"};
   if (const char* given = std::getenv("HEADWATER_FONT_FOLDER"); given && *given) folders = {given};
   std::string searched;
   for (const auto& folder : folders) {
@@ -47,10 +47,11 @@ std::filesystem::path font_folder() {
       return folder;
     searched += (searched.empty() ? "" : ", ") + folder.string();
   }
-  throw ResourceError(fmt::format(
-      "Pictures need the fonts {} and DejaVuSans-Bold.ttf, which are not in {}. Install the package "
-      "fonts-dejavu-core, or name their folder in HEADWATER_FONT_FOLDER.",
-      file, searched));
+  throw ResourceError(
+      fmt::format("Pictures need the fonts {} and DejaVuSans-Bold.ttf, which are not in {}. "
+                  "Install the package "
+                  "fonts-dejavu-core, or name their folder in HEADWATER_FONT_FOLDER.",
+                  file, searched));
 }
 
 }  // namespace
@@ -65,8 +66,8 @@ double Fonts::width(const std::string& text, const TextStyle& style) const {
   vtkNew<vtkTextProperty> property;
   set_style(property, *this, style);
   std::array<int, 4> box{};
-  if (text.empty() || !vtkTextRenderer::GetInstance()->GetBoundingBox(property, text, box.data(),
-                                                                      kDotsPerInch))
+  if (text.empty() ||
+      !vtkTextRenderer::GetInstance()->GetBoundingBox(property, text, box.data(), kDotsPerInch))
     return 0;
   return static_cast<double>(box[1] - box[0] + 1) / kOversampling;
 }

@@ -2,15 +2,15 @@
 // A flat drawing surface on top of the scenes. Coordinates are pixels of the finished picture, x to
 // the right, y down from the top; the picture is rendered larger by `kOversampling` and averaged.
 #pragma once
+#include "view/colour.hpp"
+
+#include <Eigen/Core>
 #include <vtkNew.h>
 #include <vtkRenderer.h>
 
-#include <Eigen/Core>
 #include <filesystem>
 #include <string>
 #include <vector>
-
-#include "view/colour.hpp"
 
 namespace headwater {
 

@@ -7,7 +7,9 @@ constexpr Rgb kInk{0.1, 0.1, 0.1};
 constexpr int kSteps = 256;
 }  // namespace
 
-double colour_bar_height(const TextStyle& style) { return 4.1 * style.size_px; }
+double colour_bar_height(const TextStyle& style) {
+  return 4.1 * style.size_px;
+}
 
 void draw_colour_bar(Canvas& canvas, const ColourBar& bar, double x, double y, double width,
                      const TextStyle& style) {

@@ -1,18 +1,18 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // A horizontal colour bar with round ticks and a heading that names quantity and unit.
 #pragma once
-#include <functional>
-#include <string>
-
 #include "view/axis_ticks.hpp"
 #include "view/vtk_canvas.hpp"
+
+#include <functional>
+#include <string>
 
 namespace headwater {
 
 struct ColourBar {
   std::string heading;
   TickScale scale;
-  bool both_signs = false;  ///< from -top to top instead of 0 to top
+  bool both_signs = false;            ///< from -top to top instead of 0 to top
   std::function<Rgb(double)> colour;  ///< of value / top
 };
 

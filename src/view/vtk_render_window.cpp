@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <GL/glew.h>  // before every other OpenGL header
-
 #include "view/vtk_render_window.hpp"
+
+#include <GL/glew.h>  // before every other OpenGL header
 
 #define EGL_NO_X11
 #include <EGL/egl.h>
@@ -34,7 +34,7 @@ EGLDisplay new_display() {
     EGLint major = 0, minor = 0;
     const EGLDisplay display = platform_display(platform, device, nullptr);
     return display != EGL_NO_DISPLAY && eglInitialize(display, &major, &minor) ? display
-                                                                              : EGL_NO_DISPLAY;
+                                                                               : EGL_NO_DISPLAY;
   };
   if (offers(extensions, "EGL_MESA_platform_surfaceless"))
     if (const auto display = opened(EGL_PLATFORM_SURFACELESS_MESA, EGL_DEFAULT_DISPLAY))
@@ -50,8 +50,8 @@ EGLDisplay new_display() {
   return EGL_NO_DISPLAY;
 }
 
-/// One display per process: EGL returns the same one each time and does not count its users, so it is
-/// initialised once and never ended.
+/// One display per process: EGL returns the same one each time and does not count its users, so it
+/// is initialised once and never ended.
 EGLDisplay shared_display() {
   static const EGLDisplay display = new_display();
   return display;
@@ -61,7 +61,7 @@ EGLDisplay shared_display() {
 
 vtkStandardNewMacro(EglWindow)
 
-EglWindow::EglWindow() {
+    EglWindow::EglWindow() {
   SetOffScreenRendering(1);
   SetShowWindow(false);
   SetUseOffScreenBuffers(true);
@@ -86,15 +86,28 @@ std::string EglWindow::open() {
   const EGLDisplay display = shared_display();
   if (display == EGL_NO_DISPLAY) return "EGL offers no display";
   if (!eglBindAPI(EGL_OPENGL_API)) return "EGL has no desktop OpenGL";
-  const EGLint wanted[] = {EGL_SURFACE_TYPE, EGL_PBUFFER_BIT, EGL_RENDERABLE_TYPE, EGL_OPENGL_BIT,
-                           EGL_RED_SIZE, 8, EGL_GREEN_SIZE, 8, EGL_BLUE_SIZE, 8, EGL_NONE};
+  const EGLint wanted[] = {EGL_SURFACE_TYPE,
+                           EGL_PBUFFER_BIT,
+                           EGL_RENDERABLE_TYPE,
+                           EGL_OPENGL_BIT,
+                           EGL_RED_SIZE,
+                           8,
+                           EGL_GREEN_SIZE,
+                           8,
+                           EGL_BLUE_SIZE,
+                           8,
+                           EGL_NONE};
   EGLConfig config = nullptr;
   EGLint count = 0;
   if (!eglChooseConfig(display, wanted, &config, 1, &count) || count < 1)
     return "EGL has no configuration with desktop OpenGL";
-  const EGLint version[] = {EGL_CONTEXT_MAJOR_VERSION, 3, EGL_CONTEXT_MINOR_VERSION, 2,
+  const EGLint version[] = {EGL_CONTEXT_MAJOR_VERSION,
+                            3,
+                            EGL_CONTEXT_MINOR_VERSION,
+                            2,
                             EGL_CONTEXT_OPENGL_PROFILE_MASK,
-                            EGL_CONTEXT_OPENGL_CORE_PROFILE_BIT, EGL_NONE};
+                            EGL_CONTEXT_OPENGL_CORE_PROFILE_BIT,
+                            EGL_NONE};
   context_ = eglCreateContext(display, config, EGL_NO_CONTEXT, version);
   if (context_ == EGL_NO_CONTEXT) return "there is no OpenGL 3.2 core context";
   MakeCurrent();
@@ -106,7 +119,9 @@ std::string EglWindow::open() {
   return {};
 }
 
-void EglWindow::Initialize() { open(); }
+void EglWindow::Initialize() {
+  open();
+}
 
 void EglWindow::MakeCurrent() {
   if (!context_ || IsCurrent()) return;
@@ -114,7 +129,9 @@ void EglWindow::MakeCurrent() {
   eglMakeCurrent(shared_display(), EGL_NO_SURFACE, EGL_NO_SURFACE, context_);
 }
 
-bool EglWindow::IsCurrent() { return context_ && eglGetCurrentContext() == context_; }
+bool EglWindow::IsCurrent() {
+  return context_ && eglGetCurrentContext() == context_;
+}
 
 void EglWindow::ReleaseCurrent() {
   eglMakeCurrent(shared_display(), EGL_NO_SURFACE, EGL_NO_SURFACE, EGL_NO_CONTEXT);

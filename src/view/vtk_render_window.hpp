@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// A VTK render window that owns a surfaceless EGL context: it needs no display. Debian's VTK is built
-// for X11 only, and its ordinary off-screen window ends the process where there is no X server; the
-// generic OpenGL window leaves the context to its owner, which is what this class is.
+// A VTK render window that owns a surfaceless EGL context: it needs no display. Debian's VTK is
+// built for X11 only, and its ordinary off-screen window ends the process where there is no X
+// server; the generic OpenGL window leaves the context to its owner, which is what this class is.
 #pragma once
 #include <vtkGenericOpenGLRenderWindow.h>
 
@@ -12,8 +12,7 @@ namespace headwater {
 class EglWindow : public vtkGenericOpenGLRenderWindow {
  public:
   static EglWindow* New();
-  vtkTypeMacro(EglWindow, vtkGenericOpenGLRenderWindow)
-  EglWindow(const EglWindow&) = delete;
+  vtkTypeMacro(EglWindow, vtkGenericOpenGLRenderWindow) EglWindow(const EglWindow&) = delete;
   EglWindow& operator=(const EglWindow&) = delete;
 
   /// Creates the context. Empty, or why there is none.

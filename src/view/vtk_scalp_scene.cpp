@@ -1,6 +1,11 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "view/vtk_scalp_scene.hpp"
 
+#include "view/colour.hpp"
+#include "view/scalp_spline.hpp"
+
+#include <headwater/base/units.hpp>
+
 #include <vtkCellArray.h>
 #include <vtkContourFilter.h>
 #include <vtkDoubleArray.h>
@@ -12,11 +17,6 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
-
-#include <headwater/base/units.hpp>
-
-#include "view/colour.hpp"
-#include "view/scalp_spline.hpp"
 
 namespace headwater {
 namespace {
@@ -82,8 +82,7 @@ Canvas::Points isolines(const FlatMap& map, const std::vector<double>& levels) {
   data->GetPointData()->SetScalars(scalars);
   vtkNew<vtkContourFilter> contour;
   contour->SetInputData(data);
-  for (std::size_t k = 0; k < levels.size(); ++k)
-    contour->SetValue(static_cast<int>(k), levels[k]);
+  for (std::size_t k = 0; k < levels.size(); ++k) contour->SetValue(static_cast<int>(k), levels[k]);
   contour->Update();
   Canvas::Points ends;
   vtkPolyData* lines = contour->GetOutput();
@@ -117,8 +116,8 @@ Canvas::Points arc(const Eigen::Vector2d& centre, const Eigen::Vector2d& radii, 
   constexpr int steps = 90;
   for (int k = 0; k <= steps; ++k) {
     const double angle = (from_degree + (to_degree - from_degree) * k / steps) * kDegree;
-    points.emplace_back(centre + Eigen::Vector2d(radii.x() * std::cos(angle),
-                                                 radii.y() * std::sin(angle)));
+    points.emplace_back(centre +
+                        Eigen::Vector2d(radii.x() * std::cos(angle), radii.y() * std::sin(angle)));
   }
   return points;
 }

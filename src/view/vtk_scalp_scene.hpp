@@ -3,10 +3,10 @@
 // colours and lines of equal potential by spherical splines, electrodes as dots. The map ends a
 // little outside the outermost electrode: nothing is shown where nothing was measured.
 #pragma once
-#include <headwater/view/source_picture.hpp>
-
 #include "view/axis_ticks.hpp"
 #include "view/vtk_canvas.hpp"
+
+#include <headwater/view/source_picture.hpp>
 
 namespace headwater {
 

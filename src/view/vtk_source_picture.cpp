@@ -1,13 +1,23 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Composes the picture, top to bottom: title; on the left four views of the brain and their colour bar,
-// on the right the scalp map, its bar and the list of marks; notes across the whole width. The height
-// follows from what there is to write. All lengths are parts of the width.
+// Composes the picture, top to bottom: title; on the left four views of the brain and their colour
+// bar, on the right the scalp map, its bar and the list of marks; notes across the whole width. The
+// height follows from what there is to write. All lengths are parts of the width.
+#include "view/module_entry.hpp"
+#include "view/vtk_brain_scene.hpp"
+#include "view/vtk_canvas.hpp"
+#include "view/vtk_colour_bar.hpp"
+#include "view/vtk_render_window.hpp"
+#include "view/vtk_scalp_scene.hpp"
+
+#include <headwater/base/error.hpp>
+#include <headwater/base/version.hpp>
+
 #include <fmt/core.h>
+#include <vtkImageData.h>
 #include <vtkNew.h>
 #include <vtkObjectFactory.h>
 #include <vtkOutputWindow.h>
 #include <vtkPNGWriter.h>
-#include <vtkImageData.h>
 #include <vtkRendererCollection.h>
 #include <vtkStringOutputWindow.h>
 #include <vtkUnsignedCharArray.h>
@@ -16,16 +26,6 @@
 #include <algorithm>
 #include <cmath>
 #include <exception>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/version.hpp>
-
-#include "view/module_entry.hpp"
-#include "view/vtk_brain_scene.hpp"
-#include "view/vtk_canvas.hpp"
-#include "view/vtk_colour_bar.hpp"
-#include "view/vtk_render_window.hpp"
-#include "view/vtk_scalp_scene.hpp"
 
 namespace headwater {
 namespace {
@@ -44,15 +44,17 @@ std::string with_unit(const std::string& name, const std::string& unit) {
 /// What the module itself has to say about this picture.
 std::vector<std::string> own_notes(const SourcePicture& p) {
   std::vector<std::string> notes;
-  notes.push_back(fmt::format(
-      "Colour: the largest value, as a local mean (Gaussian, SD {:.3g} mm), down to {:.0f} mm below "
-      "the surface; deeper sources are not painted.",
-      0.75 * p.spacing_mm, kShownDepth_mm));
+  notes.push_back(
+      fmt::format("Colour: the largest value, as a local mean (Gaussian, SD {:.3g} mm), down to "
+                  "{:.0f} mm below "
+                  "the surface; deeper sources are not painted.",
+                  0.75 * p.spacing_mm, kShownDepth_mm));
   if (!p.marks.empty())
-    notes.push_back(fmt::format(
-        "Marks are seen through the brain: filled, at most {:.0f} mm below the surface seen; hollow, "
-        "deeper or behind; diamonds, mirrored pair.",
-        kShownDepth_mm));
+    notes.push_back(
+        fmt::format("Marks are seen through the brain: filled, at most {:.0f} mm below the surface "
+                    "seen; hollow, "
+                    "deeper or behind; diamonds, mirrored pair.",
+                    kShownDepth_mm));
   Eigen::Index largest = 0;
   const double value = p.values.maxCoeff(&largest);
   const double depth = depth_below_hull_mm(p.points_mni_mm.col(largest));
@@ -77,8 +79,12 @@ std::string full_caption(const PictureMark& mark) {
 
 struct Styles {
   explicit Styles(double w)
-      : title{w / 44, true, kInk}, subtitle{w / 58, false, kGrey}, text{w / 56, false, kInk},
-        heading{w / 56, true, kInk}, caption{w / 63, false, kInk}, note{w / 72, false, kGrey} {}
+      : title{w / 44, true, kInk},
+        subtitle{w / 58, false, kGrey},
+        text{w / 56, false, kInk},
+        heading{w / 56, true, kInk},
+        caption{w / 63, false, kInk},
+        note{w / 72, false, kGrey} {}
   TextStyle title, subtitle, text, heading, caption, note;
 };
 
@@ -86,9 +92,7 @@ struct Styles {
 struct Block {
   std::vector<std::string> lines;
   TextStyle style;
-  double height() const {
-    return static_cast<double>(lines.size()) * kLineHeight * style.size_px;
-  }
+  double height() const { return static_cast<double>(lines.size()) * kLineHeight * style.size_px; }
 };
 
 void draw_block(Canvas& canvas, const Block& block, double x, double y) {
@@ -103,13 +107,16 @@ struct Layout {
   Block title, subtitle;
   std::vector<Block> captions, notes;
   std::array<BrainPanel, 4> panels;
-  double body_y, second_row_y, bar_y, scalp_y, scalp_width, captions_y, captions_end, notes_y, height;
+  double body_y, second_row_y, bar_y, scalp_y, scalp_width, captions_y, captions_end, notes_y,
+      height;
 };
 
 class Composer {
  public:
   Composer(const SourcePicture& picture, const Fonts& fonts)
-      : p_(picture), fonts_(fonts), styles_(picture.width_px),
+      : p_(picture),
+        fonts_(fonts),
+        styles_(picture.width_px),
         scale_(tick_scale(picture.values.maxCoeff(), 4)),
         scene_(make_scene(picture, scale_)) {
     measure();
@@ -125,8 +132,8 @@ class Composer {
     window->SetNumberOfLayers(2);
     window->AddRenderer(paper);
     for (std::size_t k = 0; k < brain_sides().size(); ++k)
-      window->AddRenderer(scene_.view(brain_sides()[k], at_.panels[k],
-                                      Eigen::Vector2d(width_px(), height_px())));
+      window->AddRenderer(
+          scene_.view(brain_sides()[k], at_.panels[k], Eigen::Vector2d(width_px(), height_px())));
     canvas.renderer()->SetLayer(1);
     window->AddRenderer(canvas.renderer());
     draw_block(canvas, at_.title, at_.margin, at_.margin);
@@ -186,8 +193,8 @@ class Composer {
       const double middle = y + kLineHeight * text_px() + tallest / 2;
       for (const std::size_t k : {row, row + 1}) {
         const Eigen::Vector2d size = (at_.px_per_mm * scene_.extent_mm(sides[k])).array() + 4;
-        at_.panels[k] = {{at_.margin + (k == row ? 0.5 : 1.5) * column, middle}, size,
-                         at_.px_per_mm};
+        at_.panels[k] = {
+            {at_.margin + (k == row ? 0.5 : 1.5) * column, middle}, size, at_.px_per_mm};
       }
       y = middle + tallest / 2 + gap;
     }
@@ -206,9 +213,9 @@ class Composer {
     if (p_.marks.empty()) return;
     y += kLineHeight * text_px();
     for (const auto& mark : p_.marks) {
-      at_.captions.push_back({fonts_.wrapped(full_caption(mark), styles_.text,
-                                             at_.right_width - 1.4 * text_px()),
-                              styles_.caption});
+      at_.captions.push_back(
+          {fonts_.wrapped(full_caption(mark), styles_.text, at_.right_width - 1.4 * text_px()),
+           styles_.caption});
       y += at_.captions.back().height() + kCaptionGap * text_px();
     }
     at_.captions_end = y;
@@ -218,7 +225,8 @@ class Composer {
     const BrainSide& side = brain_sides()[k];
     const BrainPanel& panel = at_.panels[k];
     const double row_y = k < kTop ? at_.body_y : at_.second_row_y;
-    canvas.text({panel.centre.x(), row_y + 0.5 * kLineHeight * text_px()}, side.name, styles_.heading, Align::centre);
+    canvas.text({panel.centre.x(), row_y + 0.5 * kLineHeight * text_px()}, side.name,
+                styles_.heading, Align::centre);
     const double across = panel.size.x() / 2 + 0.75 * text_px();
     const double along = panel.size.y() / 2 + 0.65 * text_px();
     const auto letter = [&](double x, double y, const char* text) {
@@ -250,8 +258,8 @@ class Composer {
                     styles_.text);
     if (!has_scalp()) return;
     const double middle = at_.right_x + at_.right_width / 2;
-    canvas.text({middle, at_.body_y + 0.5 * kLineHeight * text_px()}, "scalp, from above", styles_.heading,
-                Align::centre);
+    canvas.text({middle, at_.body_y + 0.5 * kLineHeight * text_px()}, "scalp, from above",
+                styles_.heading, Align::centre);
     draw_scalp_map(canvas, p_, {middle, at_.scalp_y + at_.scalp_width / 2}, at_.scalp_width,
                    styles_.text);
     const TickScale scale = scalp_scale(p_);
@@ -269,7 +277,8 @@ class Composer {
     y += kLineHeight * text_px();
     for (std::size_t k = 0; k < at_.captions.size(); ++k) {
       const PictureMark& mark = p_.marks[k];
-      draw_mark(canvas, {at_.right_x + 0.5 * text_px(), y + 0.5 * kLineHeight * styles_.caption.size_px},
+      draw_mark(canvas,
+                {at_.right_x + 0.5 * text_px(), y + 0.5 * kLineHeight * styles_.caption.size_px},
                 0.33 * text_px(), mark.pair, depth_below_hull_mm(mark.mni_mm) <= kShownDepth_mm);
       draw_block(canvas, at_.captions[k], at_.right_x + 1.4 * text_px(), y);
       y += at_.captions[k].height() + kCaptionGap * text_px();
@@ -357,7 +366,8 @@ class QuietVtk {
 extern "C" void headwater_draw_source_picture(headwater::DrawingTask* task) {
   using namespace headwater;
   if (task->version != version()) {
-    task->problem = "The drawing module and the library are of different versions. Install both anew.";
+    task->problem =
+        "The drawing module and the library are of different versions. Install both anew.";
     return;
   }
   try {
