@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The lead field of one participant - 64 electrodes, the 7 mm lattice, default shells, 1e-9 - by
+// The lead field of one participant - 64 electrodes, the 6 mm lattice, default shells, 1e-9 - by
 // the fast kernel and by its plain twin, in one run on one core, so that their ratio means
 // something.
 #include "reference/lead_field.hpp"
@@ -31,7 +31,7 @@ template <typename Kernel>
 void time_kernel(benchmark::State& state, Kernel kernel) {
   const headwater::HeadModel head = headwater::default_head();
   const double scalp = head.radii_m(head.radii_m.size() - 1);
-  const Eigen::Matrix3Xd points = headwater::lattice_grid(7e-3, scalp).head_m;
+  const Eigen::Matrix3Xd points = headwater::lattice_grid(6e-3, scalp).head_m;
   const Eigen::Matrix3Xd electrodes = cap_directions();
   for (auto _ : state) benchmark::DoNotOptimize(kernel(head, electrodes, points));
   state.counters["points"] = static_cast<double>(points.cols());
