@@ -1,14 +1,12 @@
 # SPDX-License-Identifier: GPL-3.0-or-later
-# What `cmake --install` lays down: program, library, drawing module, public headers, and the package
-# files through which other projects find Headwater::headwater. Templates are inside the library.
+# What `cmake --install` lays down: program, library, public headers, and the package files through which
+# other projects find Headwater::headwater. Templates are inside the library; the drawing module installs
+# itself (src/view/view_module.cmake).
 include(CMakePackageConfigHelpers)
 set(headwater_package_folder ${CMAKE_INSTALL_LIBDIR}/cmake/Headwater)
 
 install(TARGETS headwater EXPORT HeadwaterTargets LIBRARY DESTINATION ${CMAKE_INSTALL_LIBDIR})
 install(TARGETS headwater_program RUNTIME DESTINATION ${CMAKE_INSTALL_BINDIR})
-if(TARGET headwater_view)  # loaded with dlopen from the library's own folder, never linked
-  install(TARGETS headwater_view LIBRARY DESTINATION ${CMAKE_INSTALL_LIBDIR})
-endif()
 install(DIRECTORY ${CMAKE_SOURCE_DIR}/include/headwater DESTINATION ${CMAKE_INSTALL_INCLUDEDIR}
         FILES_MATCHING PATTERN "*.hpp")
 
