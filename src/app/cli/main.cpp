@@ -1,6 +1,45 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <malloc.h>
+
+#include <cstdio>
+#include <exception>
+
 #include <fmt/core.h>
 
+#include <headwater/base/error.hpp>
 #include <headwater/base/version.hpp>
 
-int main() { fmt::print("headwater {}\n{}\n", headwater::version(), headwater::caution()); }
+#include "app/cli/command.hpp"
+
+int main(int argc, char** argv) {
+  using namespace headwater;
+  // Matrices of 10 MB come and go: keep their pages, since fresh ones cost more than the arithmetic.
+  mallopt(M_MMAP_THRESHOLD, 1 << 30);
+  mallopt(M_TRIM_THRESHOLD, 1 << 30);
+
+  CLI::App program("Locates the cortical generators of mismatch responses from EEG averages.", "headwater");
+  program.set_version_flag("--version", "headwater " + version() + "\n" + caution());
+  program.require_subcommand(1);
+  program.footer("Start with: headwater example DIR, then headwater run DIR/experiment.toml\n\n" + caution());
+  cli::Outcome outcome;
+  cli::add_example(program, outcome);
+  cli::add_inspect(program, outcome);
+  cli::add_locate(program, outcome);
+  cli::add_run(program, outcome);
+  cli::add_draw(program, outcome);
+  cli::add_leadfield(program, outcome);
+  cli::add_keys(program, outcome);
+  try {
+    program.parse(argc, argv);
+  } catch (const CLI::ParseError& error) {
+    const int code = program.exit(error);
+    return code == 0 ? 0 : static_cast<int>(Trouble::experiment);
+  } catch (const Error& error) {
+    fmt::print(stderr, "headwater: {}\n", error.what());
+    return static_cast<int>(error.trouble());
+  } catch (const std::exception& error) {
+    fmt::print(stderr, "headwater: {}\n", error.what());
+    return static_cast<int>(Trouble::resource);
+  }
+  return outcome.exit_code;
+}
