@@ -48,9 +48,17 @@ std::vector<double> map_edge(const SourcePicture& picture) {
       const double along = place.dot(way);  // distance times the cosine of the angle to the spoke
       if (along > 0) reach = std::max(reach, along * along / place.norm());
     }
-    reach = std::min(reach + kMargin, kPi);
   }
-  return edge;
+  // A running mean over 21 degrees takes the scallops between neighbours away.
+  constexpr int half = kSpokes * 21 / 720;
+  std::vector<double> smooth(kSpokes, 0);
+  for (int spoke = 0; spoke < kSpokes; ++spoke) {
+    double& mean = smooth[static_cast<std::size_t>(spoke)];
+    for (int k = -half; k <= half; ++k)
+      mean += edge[static_cast<std::size_t>((spoke + k + kSpokes) % kSpokes)] / (2 * half + 1);
+    mean = std::min(mean + kMargin, kPi);
+  }
+  return smooth;
 }
 
 FlatMap flat_map(const SourcePicture& picture, const std::vector<double>& edge) {
