@@ -34,14 +34,34 @@ struct FlatMap {
   std::vector<Eigen::Vector3i> triangles;
 };
 
-double map_radius(const SourcePicture& picture) {
-  double largest = 0;
-  for (Eigen::Index i = 0; i < picture.directions.cols(); ++i)
-    largest = std::max(largest, flat_position(picture.directions.col(i)).norm());
-  return std::min(largest + kMargin, kPi);
+/// Where the map ends (angle from the vertex) in each direction of a spoke: a little outside the
+/// outermost electrode thereabouts. An electrode counts less the further it stands to the side
+/// (by the squared cosine), so that a low mastoid does not stretch the map over the face.
+std::vector<double> map_edge(const SourcePicture& picture) {
+  std::vector<double> edge(kSpokes, 0);
+  for (int spoke = 0; spoke < kSpokes; ++spoke) {
+    const double angle = 2 * kPi * spoke / kSpokes;
+    const Eigen::Vector2d way(std::cos(angle), std::sin(angle));
+    double& reach = edge[static_cast<std::size_t>(spoke)];
+    for (Eigen::Index i = 0; i < picture.directions.cols(); ++i) {
+      const Eigen::Vector2d place = flat_position(picture.directions.col(i));
+      const double along = place.dot(way);  // distance times the cosine of the angle to the spoke
+      if (along > 0) reach = std::max(reach, along * along / place.norm());
+    }
+  }
+  // A running mean over 21 degrees takes the scallops between neighbours away.
+  constexpr int half = kSpokes * 21 / 720;
+  std::vector<double> smooth(kSpokes, 0);
+  for (int spoke = 0; spoke < kSpokes; ++spoke) {
+    double& mean = smooth[static_cast<std::size_t>(spoke)];
+    for (int k = -half; k <= half; ++k)
+      mean += edge[static_cast<std::size_t>((spoke + k + kSpokes) % kSpokes)] / (2 * half + 1);
+    mean = std::min(mean + kMargin, kPi);
+  }
+  return smooth;
 }
 
-FlatMap flat_map(const SourcePicture& picture, double radius) {
+FlatMap flat_map(const SourcePicture& picture, const std::vector<double>& edge) {
   const ScalpSpline spline(picture.directions, picture.scalp_uV);
   FlatMap map;
   map.places.emplace_back(0, 0);
@@ -51,7 +71,7 @@ FlatMap flat_map(const SourcePicture& picture, double radius) {
   for (int ring = 1; ring <= kRings; ++ring)
     for (int spoke = 0; spoke < kSpokes; ++spoke) {
       const double angle = 2 * kPi * spoke / kSpokes;
-      map.places.emplace_back(radius * ring / kRings *
+      map.places.emplace_back(edge[static_cast<std::size_t>(spoke)] * ring / kRings *
                               Eigen::Vector2d(std::cos(angle), std::sin(angle)));
       const int outer = at(ring, spoke), next = at(ring, spoke + 1);
       const int inner = at(ring - 1, spoke), inner_next = at(ring - 1, spoke + 1);
@@ -143,11 +163,12 @@ TickScale scalp_scale(const SourcePicture& picture) {
 
 void draw_scalp_map(Canvas& canvas, const SourcePicture& picture, const Eigen::Vector2d& centre,
                     double width, const TextStyle& style) {
-  const double radius = map_radius(picture), pen = style.size_px / 14;
-  const double reach = std::max(radius, 1.12 * kOutline);
+  const std::vector<double> edge = map_edge(picture);
+  const double pen = style.size_px / 14;
+  const double reach = std::max(*std::max_element(edge.begin(), edge.end()), 1.12 * kOutline);
   const Frame frame{centre, width / 2 / reach};
   const TickScale scale = scalp_scale(picture);
-  const FlatMap map = flat_map(picture, radius);
+  const FlatMap map = flat_map(picture, edge);
   std::vector<Rgb> colours;
   for (const double value : map.values) colours.push_back(balance_colour(value / scale.top));
   canvas.shaded(frame(map.places), map.triangles, colours);

@@ -1,7 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The scalp map: the head from above laid flat (azimuthal equidistant), nose up, left on the left;
-// colours and lines of equal potential by spherical splines, electrodes as dots. The map ends a
-// little outside the outermost electrode: nothing is shown where nothing was measured.
+// colours and lines of equal potential by spherical splines, electrodes as dots. In every direction
+// the map ends a little outside the outermost electrode: nothing is shown where nothing was
+// measured.
 #pragma once
 #include "view/axis_ticks.hpp"
 #include "view/vtk_canvas.hpp"
