@@ -59,7 +59,7 @@ void add_marks(SourcePicture& picture, const fs::path& peaks_file, const std::st
     PictureMark mark;
     mark.mni_mm = places.col(static_cast<Eigen::Index>(row));
     mark.pair = pair;
-    mark.label = pair ? (mark.mni_mm.x() < 0 ? "L" : "R") : "P";
+    mark.label = fmt::format("{}", pair ? (mark.mni_mm.x() < 0 ? 'L' : 'R') : 'P');
     const std::string strength =
         cell(row, "unit") == "n/a" ? cell(row, "value")
                                    : fmt::format("{} {}", cell(row, "value"), cell(row, "unit"));

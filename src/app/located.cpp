@@ -144,16 +144,15 @@ LocatedContrast Locator::locate(std::size_t place, const std::string& method,
   located.estimate = estimate_sources(located.inverse, contrast.data_V);
   located.courses = region_courses(located.inverse, located.estimate, contrast.data_V,
                                    forward.regions, forward.outward);
+  const PowerIndices indices(
+      located.inverse, engine.subspace.basis, contrast.noise_V2, forward.lobes,
+      {400, experiment_->seed, participant_->name + " " + contrast.name + " " + method});
   for (const auto& window : windows) {
     LocatedWindow part{window, samples_in(contrast.times_s, window), {}, {}, {}, {}};
     part.map = window_map(located.estimate.amplitude, part.samples);
     part.peaks = find_peaks(forward.neighbours, part.map, located.estimate.amplitude,
                             contrast.times_s, part.samples);
-    const IndexOptions options{
-        400, experiment_->seed,
-        participant_->name + " " + contrast.name + " " + method + " " + window.name};
-    part.indices = power_indices(located.inverse, contrast.data_V, part.samples,
-                                 engine.subspace.basis, contrast.noise_V2, forward.lobes, options);
+    part.indices = indices.at(contrast.data_V, part.samples);
     const auto data = contrast.data_V.middleCols(part.samples.first, part.samples.count);
     const GramSpectrum& used = spectrum ? *spectrum : GramSpectrum{};
     if (spectrum) {

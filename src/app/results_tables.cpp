@@ -45,13 +45,15 @@ const std::vector<ColumnInfo> kPlaceColumns = {
     {"gyrus", "Gyrus of the nearest landmark (or the atlas label)", ""},
     {"lobe", "Lobe", ""},
     {"brodmann", "Customary Brodmann areas of the gyrus (textbook knowledge, not measured)", ""},
+    {"nearby", "Gyri with a landmark within 15 mm, nearest first: the labels are that uncertain", ""},
     {"depth_mm", "Depth below the hull of the template brain, on the ray from the centre", "mm"}};
 
 void append_place(Row& row, const ForwardModel& forward, Eigen::Index point) {
   const auto at = forward.grid.mni_m.col(point);
   const Place place = place_of(forward, point);
   append(row, {mm(at.x()), mm(at.y()), mm(at.z()), place.side, place.gyrus, place.lobe, place.brodmann,
-               mm(forward.grid.depth_m[point])});
+               join_labels(nearby_gyri(at, 15 * kMillimetre)), mm(forward.grid.depth_m[point])});
+  if (row[row.size() - 2].empty()) row[row.size() - 2] = "n/a";
 }
 
 std::vector<ColumnInfo> joined(std::vector<ColumnInfo> a, const std::vector<ColumnInfo>& b,
@@ -90,22 +92,64 @@ void append_dipole(OutputTable& table, const ForwardModel& forward, const Row& h
   add("mirrored pair", verdict.pair, verdict.pair.point, verdict.pair.moment_Am, pair);
 }
 
-/// Regions by falling rms in a window.
+/// Regions of a window: those near the surface first, by falling rms, then the deep ones. A deep region -
+/// its median point more than 25 mm below the hull (common practice; no source) - collects leakage from
+/// every cortex around it, so that it cannot be ranked with the others.
 struct RankedRegion {
   std::size_t region;
   double rms;
+  bool deep;
 };
 
-std::vector<RankedRegion> ranked_regions(const LocatedContrast& located, const SampleRange& samples) {
+bool is_deep(const ForwardModel& forward, const Region& region) {
+  std::vector<double> depths;
+  for (const Eigen::Index p : region.points) depths.push_back(forward.grid.depth_m[p]);
+  const auto middle = depths.begin() + static_cast<std::ptrdiff_t>(depths.size() / 2);
+  std::nth_element(depths.begin(), middle, depths.end());
+  return *middle > 25 * kMillimetre;
+}
+
+std::vector<RankedRegion> ranked_regions(const ForwardModel& forward, const LocatedContrast& located,
+                                         const SampleRange& samples) {
   std::vector<RankedRegion> ranked;
-  for (Eigen::Index r = 0; r < located.courses.rms.rows(); ++r)
-    ranked.push_back({static_cast<std::size_t>(r),
+  for (Eigen::Index r = 0; r < located.courses.rms.rows(); ++r) {
+    const auto region = static_cast<std::size_t>(r);
+    ranked.push_back({region,
                       std::sqrt(located.courses.rms.row(r)
                                     .segment(samples.first, samples.count)
-                                    .squaredNorm() / static_cast<double>(samples.count))});
-  std::stable_sort(ranked.begin(), ranked.end(),
-                   [](const RankedRegion& a, const RankedRegion& b) { return a.rms > b.rms; });
+                                    .squaredNorm() / static_cast<double>(samples.count)),
+                      is_deep(forward, forward.regions[region])});
+  }
+  std::stable_sort(ranked.begin(), ranked.end(), [](const RankedRegion& a, const RankedRegion& b) {
+    return a.deep != b.deep ? b.deep : a.rms > b.rms;
+  });
   return ranked;
+}
+
+/// The three strongest near the surface; a deep region is named where it is larger still.
+std::string strongest_regions(const ForwardModel& forward, const std::vector<RankedRegion>& ranked) {
+  std::string text;
+  const RankedRegion* deep = nullptr;
+  for (std::size_t k = 0; k < ranked.size(); ++k) {
+    const auto& name = forward.regions[ranked[k].region].name;
+    if (!ranked[k].deep && k < 3) text += (k > 0 ? ", " : "") + name;
+    if (ranked[k].deep && !deep) deep = &ranked[k];
+  }
+  if (deep && (ranked[0].deep || deep->rms > ranked[0].rms))
+    text += fmt::format("{}{} (deep)", text.empty() ? "" : "; larger: ",
+                        forward.regions[deep->region].name);
+  return text;
+}
+
+const char* const kSuppressedNote =
+    "LCMV suppresses correlated sources of both sides: compare lcmv.mirror_paired = true";
+
+/// What to know about a peak, or "".
+std::string peak_note(const ForwardModel& forward, const DipoleVerdict& verdict,
+                      const SourceOperator& inverse, Eigen::Index point) {
+  if (!verdict.pair_preferred) return "";
+  if (may_be_merged(forward.grid, point)) return kMergedNote;
+  return inverse.pair_blind ? kSuppressedNote : "";
 }
 
 }  // namespace
@@ -204,11 +248,10 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
     for (const auto& peak : window.peaks) {
       Row row{window.window.name, "peak", std::to_string(++rank)};
       append_place(row, forward, peak.point);
-      const bool merged = verdict.pair_preferred && may_be_merged(forward.grid, peak.point);
+      const std::string note = peak_note(forward, verdict, inverse, peak.point);
       append(row, {format_number(peak.value / inverse.unit_in_SI, 6),
                    inverse.unit.empty() ? "n/a" : inverse.unit, ms(peak.latency_s),
-                   merged ? kMergedNote : ""});
-      if (row.back().empty()) row.back() = "n/a";
+                   note.empty() ? "n/a" : note});
       table.rows.push_back(row);
     }
   }
@@ -222,8 +265,10 @@ OutputTable region_table(const ForwardModel& forward, const LocatedContrast& loc
       "cancel). projected: mean over the window of the course along the region's dominant pattern, "
       "positive where it points outwards on balance.",
       {{"window", "Latency window", ""},
-       {"rank", "Order by rms", ""},
+       {"rank", "Order by rms, among regions near the surface, then among deep ones", ""},
        {"region", "Region", ""},
+       {"deep", "yes: the median point lies more than 25 mm below the hull, where leakage from all around "
+                "collects", ""},
        {"points", "Source points", ""},
        {"rms", inverse.quantity, inverse.unit},
        {"projected", inverse.quantity + ", signed", inverse.unit},
@@ -231,13 +276,16 @@ OutputTable region_table(const ForwardModel& forward, const LocatedContrast& loc
       {}};
   for (const auto& window : located.windows) {
     int rank = 0;
-    for (const auto& entry : ranked_regions(located, window.samples)) {
+    bool deep_began = false;
+    for (const auto& entry : ranked_regions(forward, located, window.samples)) {
+      if (entry.deep && !deep_began) rank = 0;
+      deep_began = entry.deep;
       const auto r = static_cast<Eigen::Index>(entry.region);
       const auto& region = forward.regions[entry.region];
       const double projected =
           located.courses.projected.row(r).segment(window.samples.first, window.samples.count).mean();
       table.rows.push_back({window.window.name, std::to_string(++rank), region.name,
-                            std::to_string(region.points.size()),
+                            entry.deep ? "yes" : "no", std::to_string(region.points.size()),
                             format_number(entry.rms / inverse.unit_in_SI, 6),
                             format_number(projected / inverse.unit_in_SI, 6),
                             format_fixed(located.courses.share[r], 3)});
@@ -313,7 +361,10 @@ Json fit_json(const ParticipantData& participant, const ContrastWaveform& contra
       .set("Lambda", choice.used)
       .set("EffectiveParameters", choice.effective_parameters);
   Json choices = Json::object();
-  choices.set("gcv", choice.gcv).set("l-curve", choice.l_curve).set("snr 3", choice.snr3);
+  choices.set("gcv", choice.gcv)
+      .set("l-curve", choice.l_curve)
+      .set("snr 3", choice.snr3)
+      .set("discrepancy", choice.discrepancy);
   choices.set("gcv at the edge of its search", choice.gcv_at_edge)
       .set("l-curve at the edge of its search", choice.l_curve_at_edge);
   regularisation.set("AllChoices", choices);
@@ -341,10 +392,8 @@ std::vector<SummaryRow> summarise(const ParticipantData& participant,
   for (std::size_t w = 0; w < located.windows.size(); ++w) {
     const auto& window = located.windows[w];
     const DipoleVerdict& verdict = dipoles[w].mean;
-    std::string strongest;
-    const auto ranked = ranked_regions(located, window.samples);
-    for (std::size_t k = 0; k < std::min<std::size_t>(3, ranked.size()); ++k)
-      strongest += (k > 0 ? ", " : "") + forward.regions[ranked[k].region].name;
+    const std::string strongest =
+        strongest_regions(forward, ranked_regions(forward, located, window.samples));
     const auto add = [&](const std::string& kind, Eigen::Index point, double value,
                          const std::string& unit, double latency_s, const std::string& note) {
       const Place place = place_of(forward, point);
@@ -358,9 +407,8 @@ std::vector<SummaryRow> summarise(const ParticipantData& participant,
           std::nan(""), pair_note(verdict));
     if (!window.peaks.empty()) {
       const Peak& peak = window.peaks[0];
-      const bool merged = verdict.pair_preferred && may_be_merged(forward.grid, peak.point);
       add("peak", peak.point, peak.value / located.inverse.unit_in_SI, located.inverse.unit,
-          peak.latency_s, merged ? kMergedNote : "");
+          peak.latency_s, peak_note(forward, verdict, located.inverse, peak.point));
     }
   }
   return rows;

@@ -15,22 +15,15 @@ namespace headwater {
 namespace {
 
 struct RegionPower {
-  Eigen::MatrixXd form;  // Q
   double points = 0;
-  double quiet = 0;        // mean_t z'Qz
-  Eigen::VectorXd slope;   // 2 Q mean(z)
-  double at(const Eigen::VectorXd& e) const { return quiet + slope.dot(e) + e.dot(form * e); }
+  double quiet = 0;           // of the data: mean_t z'Qz
+  Eigen::RowVectorXd change;  // by each draw of noise
 };
 
 /// Sum of the parts weighted by their points, so that a union's power is the mean over its points.
 RegionPower united(const RegionPower& a, const RegionPower& b) {
-  RegionPower sum;
-  sum.points = a.points + b.points;
-  const double wa = a.points / sum.points, wb = b.points / sum.points;
-  sum.form = wa * a.form + wb * b.form;
-  sum.quiet = wa * a.quiet + wb * b.quiet;
-  sum.slope = wa * a.slope + wb * b.slope;
-  return sum;
+  const double points = a.points + b.points, wa = a.points / points, wb = b.points / points;
+  return {points, wa * a.quiet + wb * b.quiet, wa * a.change + wb * b.change};
 }
 
 struct Comparison {
@@ -43,14 +36,14 @@ double ratio(double more, double less) {
   return sum > 0 ? (more - less) / sum : 0;
 }
 
-PowerIndex summarise(const Comparison& comparison, const Eigen::MatrixXd& noise_maps) {
+PowerIndex summarise(const Comparison& comparison) {
   PowerIndex index{comparison.name, ratio(comparison.more.quiet, comparison.less.quiet), 0, 0};
   std::vector<double> draws;
   double mean = 0;
-  for (Eigen::Index k = 0; k < noise_maps.cols(); ++k) {
-    const Eigen::VectorXd e = noise_maps.col(k);
-    draws.push_back(ratio(comparison.more.at(e), comparison.less.at(e)));
-    mean += draws.back() / static_cast<double>(noise_maps.cols());
+  const auto &more = comparison.more, &less = comparison.less;
+  for (Eigen::Index k = 0; k < more.change.size(); ++k) {
+    draws.push_back(ratio(more.quiet + more.change[k], less.quiet + less.change[k]));
+    mean += draws.back() / static_cast<double>(more.change.size());
   }
   std::sort(draws.begin(), draws.end());
   const auto quantile = [&](double q) {
@@ -65,7 +58,7 @@ PowerIndex summarise(const Comparison& comparison, const Eigen::MatrixXd& noise_
 }
 
 std::vector<Comparison> comparisons(const std::map<std::pair<std::string, Side>, RegionPower>& power,
-                                    const std::vector<Region>& lobes) {
+                                    const std::vector<std::string>& lobes) {
   std::vector<Comparison> result;
   const auto find = [&](const std::string& lobe, Side side) -> const RegionPower* {
     const auto at = power.find({lobe, side});
@@ -73,11 +66,10 @@ std::vector<Comparison> comparisons(const std::map<std::pair<std::string, Side>,
   };
   RegionPower all_left, all_right;
   bool any = false;
-  for (const auto& region : lobes) {
-    if (region.side != Side::left) continue;
-    const auto *left = find(region.lobe, Side::left), *right = find(region.lobe, Side::right);
+  for (const auto& lobe : lobes) {
+    const auto *left = find(lobe, Side::left), *right = find(lobe, Side::right);
     if (!left || !right) continue;
-    result.push_back({"laterality " + region.lobe, *right, *left});
+    result.push_back({"laterality " + lobe, *right, *left});
     all_left = any ? united(all_left, *left) : *left;
     all_right = any ? united(all_right, *right) : *right;
     any = true;
@@ -95,35 +87,46 @@ std::vector<Comparison> comparisons(const std::map<std::pair<std::string, Side>,
 
 }  // namespace
 
-std::vector<PowerIndex> power_indices(const SourceOperator& inverse, const Eigen::MatrixXd& data_V,
-                                 const SampleRange& samples, const Eigen::MatrixXd& basis,
-                                 const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
-                                 const IndexOptions& options) {
-  const Eigen::MatrixXd z = inverse.map * data_V.middleCols(samples.first, samples.count);
-  const Eigen::VectorXd mean = z.rowwise().mean();
-  std::map<std::pair<std::string, Side>, RegionPower> power;
+PowerIndices::PowerIndices(const SourceOperator& inverse, const Eigen::MatrixXd& basis,
+                           const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
+                           const IndexOptions& options)
+    : map_(inverse.map) {
+  const Eigen::Index dimension = map_.rows();
   for (const auto& region : lobes) {
     if (region.lobe.empty() || region.side == Side::midline || region.points.empty()) continue;
-    RegionPower entry;
-    entry.points = static_cast<double>(region.points.size());
-    Eigen::MatrixXd kernel(z.rows(), static_cast<Eigen::Index>(3 * region.points.size()));
+    Form form{region.lobe, region.side, static_cast<double>(region.points.size()),
+              Eigen::MatrixXd::Zero(dimension, dimension)};
+    Eigen::MatrixXd kernel(dimension, static_cast<Eigen::Index>(3 * region.points.size()));
     for (std::size_t k = 0; k < region.points.size(); ++k)
       kernel.middleCols<3>(static_cast<Eigen::Index>(3 * k)) =
           inverse.kernel.middleCols<3>(3 * region.points[k]);
-    entry.form = Eigen::MatrixXd::Zero(z.rows(), z.rows());
-    entry.form.selfadjointView<Eigen::Lower>().rankUpdate(kernel, 1 / entry.points);
-    entry.form = Eigen::MatrixXd(entry.form.selfadjointView<Eigen::Lower>());
-    entry.quiet = (z.array() * (entry.form * z).array()).sum() / static_cast<double>(z.cols());
-    entry.slope = 2 * entry.form * mean;
-    power[{region.lobe, region.side}] = std::move(entry);
+    form.matrix.selfadjointView<Eigen::Lower>().rankUpdate(kernel, 1 / form.points);
+    form.matrix.triangularView<Eigen::StrictlyUpper>() = form.matrix.transpose();
+    forms_.push_back(std::move(form));
   }
   const Eigen::MatrixXd root = noise_V2.llt().matrixL();
   RandomStream random(options.seed, "indices " + options.stream);
-  const Eigen::MatrixXd noise_maps =
-      inverse.map * (basis * (root * random.normal_matrix(root.rows(), options.draws)));
+  noise_maps_ = map_ * (basis * (root * random.normal_matrix(root.rows(), options.draws)));
+}
+
+std::vector<PowerIndex> PowerIndices::at(const Eigen::MatrixXd& data_V,
+                                         const SampleRange& samples) const {
+  const Eigen::MatrixXd z = map_ * data_V.middleCols(samples.first, samples.count);
+  const Eigen::VectorXd mean = z.rowwise().mean();
+  std::map<std::pair<std::string, Side>, RegionPower> power;
+  std::vector<std::string> lobes;
+  for (const auto& form : forms_) {
+    RegionPower entry;
+    entry.points = form.points;
+    entry.quiet = (z.array() * (form.matrix * z).array()).sum() / static_cast<double>(z.cols());
+    // The draws are needed as numbers only: slope'e + e'Qe for every draw.
+    entry.change = (2 * (form.matrix * mean)).transpose() * noise_maps_;
+    entry.change += (noise_maps_.array() * (form.matrix * noise_maps_).array()).colwise().sum().matrix();
+    power[{form.lobe, form.side}] = std::move(entry);
+    if (form.side == Side::left) lobes.push_back(form.lobe);
+  }
   std::vector<PowerIndex> indices;
-  for (const auto& comparison : comparisons(power, lobes))
-    indices.push_back(summarise(comparison, noise_maps));
+  for (const auto& comparison : comparisons(power, lobes)) indices.push_back(summarise(comparison));
   return indices;
 }
 

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/inverse/regularisation.hpp>
 
+#include <algorithm>
 #include <cmath>
 #include <functional>
 #include <limits>
@@ -12,19 +13,24 @@
 namespace headwater {
 namespace {
 
-constexpr int kSearchPoints = 281;  // 20 a decade over 14 decades
-constexpr double kLowest = -10, kHighest = 4;
+constexpr int kSearchPoints = 201;
 
-/// Minimum of f over log10(lambda / d_max): grid, then golden section around the best point.
+/// Where lambda is searched.
+struct Range {
+  double low, high;
+  double at(double position) const {  // position 0 ... kSearchPoints - 1, logarithmic
+    return low * std::pow(high / low, position / (kSearchPoints - 1));
+  }
+};
+
+/// Minimum of f over log(lambda): grid, then golden section around the best point.
 struct Minimum {
   double lambda;
   bool at_edge;
 };
 
-Minimum minimise(const std::function<double(double)>& f, double d_max) {
-  const auto lambda_at = [&](double position) {
-    return d_max * std::pow(10, kLowest + (kHighest - kLowest) * position / (kSearchPoints - 1));
-  };
+Minimum minimise(const std::function<double(double)>& f, const Range& range) {
+  const auto lambda_at = [&](double position) { return range.at(position); };
   int best = 0;
   double lowest = std::numeric_limits<double>::infinity();
   for (int i = 0; i < kSearchPoints; ++i) {
@@ -74,6 +80,24 @@ double curvature(const Eigen::VectorXd& d, const Eigen::VectorXd& z2, double lam
   return speed > 0 ? (x1 * y2 - x2 * y1) / speed : 0;
 }
 
+/// Largest lambda whose mean squared residual is at most 1 (the noise), by bisection of its logarithm: the
+/// residual grows with lambda. NaN where the data stay below the noise, or above it everywhere.
+double discrepancy(const Eigen::VectorXd& d, const Eigen::VectorXd& z2, double samples,
+                   const Range& range) {
+  const auto residual = [&](double lambda) {
+    const Eigen::ArrayXd f = lambda / (d.array() + lambda);
+    return (f.square() * z2.array()).sum() / (samples * static_cast<double>(d.size()));
+  };
+  double low = 0, high = kSearchPoints - 1;
+  if (residual(range.low) > 1 || residual(range.high) < 1)
+    return std::numeric_limits<double>::quiet_NaN();
+  for (int step = 0; step < 60; ++step) {
+    const double middle = (low + high) / 2;
+    (residual(range.at(middle)) > 1 ? high : low) = middle;
+  }
+  return range.at(low);
+}
+
 }  // namespace
 
 RegularisationChoice choose_regularisation(const Eigen::VectorXd& eigenvalues,
@@ -81,24 +105,32 @@ RegularisationChoice choose_regularisation(const Eigen::VectorXd& eigenvalues,
   if (z.cols() == 0) throw InputError("No sample to choose the regularisation from.");
   const Eigen::VectorXd d = eigenvalues.cwiseMax(0);
   const Eigen::VectorXd z2 = z.rowwise().squaredNorm();
-  const double d_max = d.maxCoeff();
+  // Exact zeros (a point on a node of symmetry) must not stretch the search without end.
+  const double d_max = d.maxCoeff(), d_min = std::max(d.minCoeff(), 1e-12 * d_max);
+  const Range range{d_min / 10, d_max * 10};
   RegularisationChoice choice;
   const auto gcv = minimise(
       [&](double lambda) {
         const Eigen::ArrayXd f = lambda / (d.array() + lambda);
         return (f.square() * z2.array()).sum() / (f.sum() * f.sum());
       },
-      d_max);
-  const auto corner = minimise([&](double lambda) { return -curvature(d, z2, lambda); }, d_max);
+      range);
+  const auto corner = minimise([&](double lambda) { return -curvature(d, z2, lambda); }, range);
   choice.gcv = gcv.lambda;
   choice.gcv_at_edge = gcv.at_edge;
   choice.l_curve = corner.lambda;
   choice.l_curve_at_edge = corner.at_edge;
   choice.snr3 = d.mean() / 9;
+  choice.discrepancy = discrepancy(d, z2, static_cast<double>(z.cols()), range);
   switch (rule.kind) {
     case RegularisationRule::Kind::gcv:
       choice.used = choice.gcv;
       choice.rule = "gcv";
+      if (gcv.at_edge && gcv.lambda < d_max) {
+        const bool reached = std::isfinite(choice.discrepancy);
+        choice.used = reached ? choice.discrepancy : choice.snr3;
+        choice.rule = reached ? "discrepancy (gcv has no minimum)" : "snr 3 (gcv has no minimum)";
+      }
       break;
     case RegularisationRule::Kind::l_curve:
       choice.used = choice.l_curve;

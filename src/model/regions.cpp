@@ -127,6 +127,23 @@ Gyrus template_gyrus(const Eigen::Vector3d& mni_m) {
   return landmarks().gyri[static_cast<std::size_t>(nearest_gyrus(mni_m))];
 }
 
+Labels nearby_gyri(const Eigen::Vector3d& mni_m, double distance_m) {
+  const Eigen::Vector3d right(std::abs(mni_m.x()), mni_m.y(), mni_m.z());
+  const auto& marks = landmarks();
+  std::vector<std::pair<double, int>> order;
+  for (std::size_t k = 0; k < marks.gyrus.size(); ++k) {
+    const double distance = (marks.right_mni_m.col(static_cast<Eigen::Index>(k)) - right).norm();
+    if (distance <= distance_m) order.emplace_back(distance, marks.gyrus[k]);
+  }
+  std::sort(order.begin(), order.end());
+  Labels names;
+  for (const auto& [distance, gyrus] : order) {
+    const auto& name = marks.gyri[static_cast<std::size_t>(gyrus)].abbreviation;
+    if (!find_label(names, name)) names.push_back(name);
+  }
+  return names;
+}
+
 PointLabels template_labels(const SourceGrid& grid) {
   PointLabels labels;
   labels.gyri = landmarks().gyri;

@@ -30,11 +30,26 @@ struct IndexOptions {
   std::string stream;  ///< name of the random stream, e.g. participant and contrast
 };
 
-/// data_V: M by T of the contrast; noise_V2: its covariance in the subspace (M-1 by M-1, basis B).
-/// Regions without side or lobe are ignored. Indices whose two regions hold no point are left out.
-std::vector<PowerIndex> power_indices(const SourceOperator& inverse, const Eigen::MatrixXd& data_V,
-                                 const SampleRange& samples, const Eigen::MatrixXd& basis,
-                                 const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
-                                 const IndexOptions& options);
+/// The region powers of one operator as quadratic forms, made once and applied to any number of windows.
+class PowerIndices {
+ public:
+  /// noise_V2: covariance of the contrast in the subspace (M-1 by M-1, basis B of M by M-1). Regions without
+  /// side or lobe are ignored; indices whose two regions hold no point are left out.
+  PowerIndices(const SourceOperator& inverse, const Eigen::MatrixXd& basis,
+               const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
+               const IndexOptions& options);
+  /// data_V: M by T of the contrast, any reference.
+  std::vector<PowerIndex> at(const Eigen::MatrixXd& data_V, const SampleRange& samples) const;
+
+ private:
+  struct Form {
+    std::string lobe;
+    Side side;
+    double points = 0;
+    Eigen::MatrixXd matrix;  // Q
+  };
+  Eigen::MatrixXd map_, noise_maps_;
+  std::vector<Form> forms_;
+};
 
 }  // namespace headwater

@@ -45,6 +45,7 @@ struct SourceOperator {
   double unit_in_SI = 1;    ///< value in file = value inside / unit_in_SI
   Eigen::MatrixXd kernel;   ///< M-1 by 3N
   Eigen::MatrixXd map;      ///< M-1 by M
+  bool pair_blind = false;  ///< suppresses correlated bilateral sources (LCMV without mirror pairing)
   double lambda = 0;        ///< multiplier of the contrast's noise covariance; NaN where none
 };
 

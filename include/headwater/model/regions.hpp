@@ -46,6 +46,10 @@ PointLabels atlas_labels(const SourceGrid& grid, const std::filesystem::path& vo
 /// The gyrus of the template's nearest landmark at an MNI place (m).
 Gyrus template_gyrus(const Eigen::Vector3d& mni_m);
 
+/// Abbreviations of the template's gyri with a landmark within a distance (m) of an MNI place on its side,
+/// nearest first.
+Labels nearby_gyri(const Eigen::Vector3d& mni_m, double distance_m);
+
 /// Which points make a region.
 struct Region {
   std::string name;                ///< "temporal right"

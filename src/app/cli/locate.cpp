@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <algorithm>
+
 #include <fmt/core.h>
-#include <unistd.h>
 
 #include <headwater/base/progress.hpp>
 #include <headwater/base/units.hpp>
@@ -10,31 +11,43 @@
 namespace headwater::cli {
 namespace {
 
-/// What the mean over participants (or the only one) says, window by window.
-void print_summary(const std::vector<SummaryRow>& rows, const std::string& participant) {
-  std::string at, pair;
-  for (const auto& row : rows) {
-    if (row.participant != participant) continue;
-    const std::string where = row.contrast + ", " + row.window;
-    if (where != at) {
-      fmt::print("\n{} ({})\n", where, participant);
-      at = where;
-      pair.clear();
+std::string place_text(const SummaryRow& row) {
+  return fmt::format("({:.0f}, {:.0f}, {:.0f}) mm", row.mni_m.x() / kMillimetre,
+                     row.mni_m.y() / kMillimetre, row.mni_m.z() / kMillimetre);
+}
+
+/// One contrast and window of one participant: the pair once, then each method's peak and regions.
+void print_window(const std::vector<const SummaryRow*>& rows) {
+  fmt::print("\n{}, {} ({})\n", rows[0]->contrast, rows[0]->window, rows[0]->participant);
+  bool pair_printed = false;
+  for (const auto* row : rows) {
+    if (row->kind == "mirrored pair") {
+      if (!pair_printed)  // the same for every method
+        fmt::print("  mirrored pair  {} and its mirror image, {}: {}\n", place_text(*row), row->gyrus,
+                   row->note);
+      pair_printed = true;
+      continue;
     }
-    if (row.kind == "mirrored pair") {
-      if (!pair.empty()) continue;  // the same for every method
-      pair = row.note;
-      fmt::print("  mirrored pair  ({:.0f}, {:.0f}, {:.0f}) mm and its mirror image, {}: {}\n",
-                 row.mni_m.x() / kMillimetre, row.mni_m.y() / kMillimetre, row.mni_m.z() / kMillimetre,
-                 row.gyrus, row.note);
-    } else {
-      fmt::print("  {:<13}  ({:.0f}, {:.0f}, {:.0f}) mm, {} {}, {:.0f} ms{}{}\n", row.method,
-                 row.mni_m.x() / kMillimetre, row.mni_m.y() / kMillimetre, row.mni_m.z() / kMillimetre,
-                 row.side, row.gyrus, row.latency_s / kMillisecond, row.note.empty() ? "" : " - ",
-                 row.note);
-      fmt::print("  {:<13}  strongest regions: {}\n", "", row.strongest_regions);
-    }
+    fmt::print("  {:<13}  {}, {} {}, {:.0f} ms{}{}\n  {:<13}  strongest regions: {}\n", row->method,
+               place_text(*row), row->side, row->gyrus, row->latency_s / kMillisecond,
+               row->note.empty() ? "" : " - ", row->note, "", row->strongest_regions);
   }
+}
+
+/// What the last participant (the mean where there is one) says, window by window.
+void print_summary(const std::vector<SummaryRow>& rows) {
+  std::vector<std::pair<std::string, std::vector<const SummaryRow*>>> windows;
+  for (const auto& row : rows) {
+    if (row.participant != rows.back().participant) continue;
+    const std::string key = fmt::format("{}\t{}", row.contrast, row.window);
+    if (auto found = std::find_if(windows.begin(), windows.end(),
+                                  [&](const auto& entry) { return entry.first == key; });
+        found != windows.end())
+      found->second.push_back(&row);
+    else
+      windows.push_back({key, {&row}});
+  }
+  for (const auto& [key, members] : windows) print_window(members);
 }
 
 }  // namespace
@@ -45,7 +58,8 @@ int locate_and_print(const ExperimentOptions& options, bool show_inspection) {
   const InspectReport read = inspect(experiment, stages);
   const bool talk = !options.quiet && !options.json;
   if (talk && show_inspection && !read.participants.empty())
-    fmt::print("{}", aligned(inspect_table(read)));
+    fmt::print("{} of {} participants read (`headwater inspect` shows each).\n", read.participants.size(),
+               read.participants.size() + read.failures.size());
   if (options.verbose)
     for (const auto& participant : read.participants)
       fmt::print(stderr, "{}: {}\n", participant.name, participant.noise.source);
@@ -70,7 +84,7 @@ int locate_and_print(const ExperimentOptions& options, bool show_inspection) {
         .set("failures", failures);
     fmt::print("{}\n", json.dump());
   } else if (talk && !report.rows.empty()) {
-    print_summary(report.rows, report.rows.back().participant);
+    print_summary(report.rows);
     fmt::print("\nAll participants: {}\n", (experiment.output / "summary.tsv").string());
   }
   return report_failures(report.failures, !report.rows.empty());
