@@ -5,6 +5,7 @@
 #include <headwater/signal/average.hpp>
 
 #include <Eigen/Core>
+#include <fmt/core.h>
 
 #include <algorithm>
 #include <cmath>
@@ -17,7 +18,7 @@ namespace headwater {
 
 inline Labels numbered_channels(Eigen::Index count) {
   Labels labels;
-  for (Eigen::Index i = 0; i < count; ++i) labels.push_back("E" + std::to_string(i + 1));
+  for (Eigen::Index i = 0; i < count; ++i) labels.push_back(fmt::format("E{}", i + 1));
   return labels;
 }
 
@@ -39,7 +40,7 @@ inline std::vector<Average> noise_averages(RandomStream& random, const Eigen::Ma
   std::vector<Average> averages;
   for (std::size_t k = 0; k < trials.size(); ++k) {
     Average average;
-    average.condition = "condition" + std::to_string(k);
+    average.condition = fmt::format("condition{}", k);
     average.channels = numbered_channels(factor.rows());
     average.times_s = Eigen::VectorXd::LinSpaced(samples, from_s,
                                                  from_s + 4e-3 * static_cast<double>(samples - 1));

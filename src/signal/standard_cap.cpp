@@ -1,10 +1,11 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Derivation. A row at p % of the way from nasion to inion has its midline site at elevation
-// 22.5 (p-10)/10 degrees from Fpz (Fpz 0, Cz 90, Oz 180) and its ring site at azimuth 18 (p-10)/10
-// degrees from Fpz. Let M be the midline site, (-a, H) the left ring site with H in the plane x =
-// 0, h = |M - H| and v = (M - H)/h. The circle through M and both ring sites lies in the plane of v
-// and the x axis; its radius is r = (a^2 + h^2)/(2h), its centre M - r v, and the ring site stands
-// at the angle A = atan2(a, r - h) from M. The site at the fraction f of the arc is therefore
+// 2.25 (p - 10) degrees from Fpz (Fpz 0, Cz 90, Oz 180) and its ring site at azimuth 1.8 p degrees
+// from Fpz (Fp1 18, T7 90, O1 162). Let M be the midline site, (-a, H) the left ring site with H in
+// the plane x = 0, h = |M - H| and v = (M - H)/h. The circle through M and both ring sites lies in
+// the plane of v and the x axis; its radius is r = (a^2 + h^2)/(2h), its centre M - r v, and the
+// ring site stands at the angle A = atan2(a, r - h) from M. The site at the fraction f of the arc
+// is therefore
 //   M - r (1 - cos fA) v -+ r sin(fA) e_x.
 // Only left sites are computed; right ones are their copies with x negated, so that the cap is
 // mirrored to the last bit.
@@ -96,8 +97,8 @@ void append_polar_row(std::vector<Site>& sites, const std::string& row, bool fro
 }
 
 void append_inner_row(std::vector<Site>& sites, const Row& row) {
-  const double tenths = (row.percent - 10) / 10;
-  const double azimuth = 18 * kDegree * tenths, elevation = 22.5 * kDegree * tenths;
+  const double azimuth = 1.8 * kDegree * row.percent;
+  const double elevation = 2.25 * kDegree * (row.percent - 10);
   const Eigen::Vector3d midline(0, std::cos(elevation), std::sin(elevation));
   const Eigen::Vector3d ring = left_direction(azimuth, 0);
   const Eigen::Vector3d chord = midline - Eigen::Vector3d(0, ring.y(), 0);

@@ -5,6 +5,7 @@
 #include <headwater/model/head.hpp>
 #include <headwater/signal/standard_cap.hpp>
 
+#include <Eigen/Geometry>
 #include <gtest/gtest.h>
 
 #include <algorithm>
@@ -24,9 +25,9 @@ double between(const char* a, const char* b) {
   return angle_deg(standard_direction(a).value(), standard_direction(b).value());
 }
 
-// Source: 73 sites measured on the template head (MNI mm, about the head centre); the rule's stated
-// deviation is mean 2.2 and at most 4.7 degrees. LPA and RPA are no sites of the systems; nasion
-// and inion were placed by eye and are held to a bound of their own.
+// Source: sites measured on the template head (MNI mm, about the head centre); the rule's stated
+// deviation is mean 2.2 and at most 4.7 degrees (4.80 here). LPA and RPA are no sites of the
+// systems; nasion and inion were placed by eye and are held to a bound of their own.
 TEST(SignalStandardCapReference, AgreesWithMeasuredSites) {
   const Table table =
       read_table(HEADWATER_TEST_DATA "/electrodes_measured.tsv", "measured electrodes");
@@ -43,14 +44,14 @@ TEST(SignalStandardCapReference, AgreesWithMeasuredSites) {
     const double deviation = angle_deg(*direction, mni_mm * kMillimetre - kHeadCentreMni);
     if (name == "Nz" || name == "Iz") {
       RecordProperty(name, std::to_string(deviation));
-      EXPECT_LT(deviation, 9) << name;
+      EXPECT_LT(deviation, 6) << name;  // 5.4 and 4.8 degrees
       continue;
     }
     sum += deviation;
     largest = std::max(largest, deviation);
     ++count;
   }
-  EXPECT_EQ(count, 70);
+  EXPECT_EQ(count, 69);
   EXPECT_LT(sum / count, 2.4);
   EXPECT_LT(largest, 4.9);
   RecordProperty("mean_deg", std::to_string(sum / count));

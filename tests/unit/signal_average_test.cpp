@@ -74,7 +74,7 @@ Average small_average(const Labels& channels, double first, double trials) {
   Average average;
   average.condition = "a";
   average.channels = channels;
-  average.times_s = Eigen::Vector3d(0, 0.004, 0.008);
+  average.times_s = Eigen::VectorXd::LinSpaced(3, 0, 0.008);
   average.data_V.resize(static_cast<Eigen::Index>(channels.size()), 3);
   for (Eigen::Index i = 0; i < average.data_V.rows(); ++i)
     average.data_V.row(i).setConstant(first + static_cast<double>(i));

@@ -18,7 +18,7 @@ std::vector<Condition> crossed(int factors) {
       const std::string factor(1, static_cast<char>('A' + f));
       const std::string level = (cell >> f & 1) ? "2" : "1";
       condition.factors[factor] = level;
-      condition.name += factor + level;
+      condition.name.append(factor).append(level);
     }
     conditions.push_back(condition);
   }

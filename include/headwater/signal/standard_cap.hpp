@@ -9,7 +9,7 @@
 // about x (Fpz goes down).
 //
 // Frame: head frame (RAS axes through the centre of the fitted sphere). Unit vectors, no unit.
-// Accuracy: against sites measured on the template head mean 2.2, at most 4.7 degrees.
+// Accuracy: against sites measured on the template head mean 2.2, at most 4.8 degrees.
 // Source: Oostenveld & Praamstra 2001 Clin Neurophysiol 112:713 (names); pitch and angles fitted to
 // measured sites, see templates/README.md.
 #pragma once
