@@ -1,19 +1,21 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/units.hpp>
 #include <headwater/inverse/dipole_scan.hpp>
 
 #include <Eigen/QR>
-#include <cmath>
 
-#include <headwater/base/units.hpp>
+#include <algorithm>
+#include <cmath>
 
 namespace headwater {
 namespace {
 
 constexpr double kNearestHalf = 20 * kMillimetre;  // from the midline
 constexpr double kEvidence = 2;
+constexpr double kWeakerHalf = 1.0 / 3;  // of the stronger half's moment
 
-/// Orthonormalises the columns of q in place: modified Gram-Schmidt, twice (Giraud et al. 2005 Numer
-/// Math 101:87: two passes reach rounding for the well-conditioned blocks met here).
+/// Orthonormalises the columns of q in place: modified Gram-Schmidt, twice (Giraud et al. 2005
+/// Numer Math 101:87: two passes reach rounding for the well-conditioned blocks met here).
 template <typename Columns>
 void orthonormalise(Columns q) {
   for (int pass = 0; pass < 2; ++pass)
@@ -75,8 +77,10 @@ DipoleVerdict DipoleScan::judge(const Eigen::VectorXd& map_V) const {
   DipoleVerdict verdict;
   verdict.one = best(y, one_, all_, 3);
   verdict.pair = best(y, pair_, right_, 6);
-  verdict.pair_preferred =
-      verdict.pair.point >= 0 && verdict.pair.criterion < verdict.one.criterion - kEvidence;
+  const double right = verdict.pair.moment_Am.norm(), left = verdict.pair.partner_moment_Am.norm();
+  verdict.pair_preferred = verdict.pair.point >= 0 &&
+                           verdict.pair.criterion < verdict.one.criterion - kEvidence &&
+                           std::min(left, right) >= kWeakerHalf * std::max(left, right);
   return verdict;
 }
 

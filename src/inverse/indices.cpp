@@ -1,15 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Power of a region is a quadratic form of z = map d: P = mean_t z_t' Q z_t, Q = kernel kernel' / K over the
-// region's columns. For data plus a constant noise map e: P = mean z'Qz + 2 mean(z)'Q e + e'Qe. So a draw
-// costs a few products of size M-1, whatever the numbers of points and samples.
+// Power of a region is a quadratic form of z = map d: P = mean_t z_t' Q z_t, Q = kernel kernel' / K
+// over the region's columns. For data plus a constant noise map e: P = mean z'Qz + 2 mean(z)'Q e +
+// e'Qe. So a draw costs a few products of size M-1, whatever the numbers of points and samples.
+#include <headwater/base/random.hpp>
 #include <headwater/inverse/indices.hpp>
 
 #include <Eigen/Cholesky>
+
 #include <algorithm>
 #include <cmath>
 #include <map>
-
-#include <headwater/base/random.hpp>
 
 namespace headwater {
 namespace {
@@ -57,8 +57,9 @@ PowerIndex summarise(const Comparison& comparison) {
   return index;
 }
 
-std::vector<Comparison> comparisons(const std::map<std::pair<std::string, Side>, RegionPower>& power,
-                                    const std::vector<std::string>& lobes) {
+std::vector<Comparison> comparisons(
+    const std::map<std::pair<std::string, Side>, RegionPower>& power,
+    const std::vector<std::string>& lobes) {
   std::vector<Comparison> result;
   const auto find = [&](const std::string& lobe, Side side) -> const RegionPower* {
     const auto at = power.find({lobe, side});
@@ -121,7 +122,8 @@ std::vector<PowerIndex> PowerIndices::at(const Eigen::MatrixXd& data_V,
     entry.quiet = (z.array() * (form.matrix * z).array()).sum() / static_cast<double>(z.cols());
     // The draws are needed as numbers only: slope'e + e'Qe for every draw.
     entry.change = (2 * (form.matrix * mean)).transpose() * noise_maps_;
-    entry.change += (noise_maps_.array() * (form.matrix * noise_maps_).array()).colwise().sum().matrix();
+    entry.change +=
+        (noise_maps_.array() * (form.matrix * noise_maps_).array()).colwise().sum().matrix();
     power[{form.lobe, form.side}] = std::move(entry);
     if (form.side == Side::left) lobes.push_back(form.lobe);
   }

@@ -1,34 +1,34 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Fast kernel of lead_field.hpp. For each point the shells' correction is written as two Legendre series
-// in x, so that one recurrence serves both:
+// Fast kernel of lead_field.hpp. For each point the shells' correction is written as two Legendre
+// series in x, so that one recurrence serves both:
 //   A = f_inf A_h(x) + sum_n g_n P_n(x),            g_n = (2n+1) b^(n-1) (f_n - f_inf)
 //   T = f_inf T_h(x) + sum_n (g_n/n) P_n'(x)
 //     = f_inf T_h(x) + sum_k (2k+1) h_k P_k(x),      h_k = g_(k+1)/(k+1) + h_(k+2),
-// the last because P_n' = sum over k < n, n-k odd, of (2k+1) P_k. Electrodes are processed in packets.
-// Below b = 0.2 the closed form loses digits and the series is short: f_inf is taken as 0 there.
+// the last because P_n' = sum over k < n, n-k odd, of (2k+1) P_k. Electrodes are processed in
+// packets. Below b = 0.2 the closed form loses digits and the series is short: f_inf is taken as 0
+// there.
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
 #include <headwater/model/lead_field.hpp>
+#include <headwater/model/sphere_series.hpp>
+
+#include <fmt/core.h>
 
 #include <algorithm>
 #include <cmath>
 #include <cstring>
 #include <vector>
 
-#include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
-#include <headwater/model/sphere_series.hpp>
-
 namespace headwater {
 namespace {
 
-// Electrodes go through the recurrence eight at a time, in two vector registers of four (GCC and Clang
-// vector types: portable, and lowered to what the machine has).
+// Electrodes go through the recurrence eight at a time, in two vector registers of four (GCC and
+// Clang vector types: portable, and lowered to what the machine has).
 using Lanes [[gnu::vector_size(32)]] = double;
 constexpr int kLanes = 4, kRegisters = 2, kPacket = kLanes * kRegisters;
 
-constexpr double kClosedFormFrom = 0.2;     // eccentricity b
-constexpr double kTailTolerance = 1e-10;    // of the radial dipole's surface maximum
+constexpr double kClosedFormFrom = 0.2;        // eccentricity b
+constexpr double kTailTolerance = 1e-10;       // of the radial dipole's surface maximum
 constexpr double kShortTailTolerance = 1e-15;  // below kClosedFormFrom
 constexpr Eigen::Index kMostTerms = 200000;
 
@@ -44,8 +44,8 @@ struct ShellCorrection {
 /// Terms that reach the tolerance at eccentricity b whatever the factors are.
 Eigen::Index most_terms(double b) {
   Eigen::Index n = 20;
-  while (n < kMostTerms && (2.0 * static_cast<double>(n) + 1) *
-                                   std::pow(b, static_cast<double>(n)) / (1 - b) > 1e-16)
+  while (n < kMostTerms &&
+         (2.0 * static_cast<double>(n) + 1) * std::pow(b, static_cast<double>(n)) / (1 - b) > 1e-16)
     n += 1 + n / 8;
   return n;
 }
@@ -57,9 +57,11 @@ ShellCorrection correct_shells(const HeadModel& head, double largest_b) {
   shells.homogeneous = (sigma.array() == sigma[0]).all();
   const Eigen::Index terms = most_terms(shells.homogeneous ? kClosedFormFrom : largest_b);
   if (terms >= kMostTerms)
-    throw InputError(fmt::format("A point lies at {:.9f} of the head's radius: the series of the shells "
-                                 "does not converge there. Move the point inwards or thicken the outer "
-                                 "shells.", largest_b));
+    throw InputError(
+        fmt::format("A point lies at {:.9f} of the head's radius: the series of the shells "
+                    "does not converge there. Move the point inwards or thicken the outer "
+                    "shells.",
+                    largest_b));
   shells.factor = shell_factors(head, terms);
   shells.smallest_factor = std::min(shells.factor.minCoeff(), shells.limit);
   shells.envelope = (shells.factor.array() - shells.limit).abs();
@@ -160,15 +162,19 @@ void check_points(const HeadModel& head, const Eigen::Ref<const Eigen::Matrix3Xd
                   const Eigen::Ref<const Eigen::Matrix3Xd>& points_m) {
   for (Eigen::Index m = 0; m < electrodes.cols(); ++m)
     if (!electrodes.col(m).allFinite() || electrodes.col(m).squaredNorm() == 0)
-      throw InputError(fmt::format("Electrode {} has no direction: its position is the origin or not a "
-                                   "number.", m + 1));
+      throw InputError(
+          fmt::format("Electrode {} has no direction: its position is the origin or not a "
+                      "number.",
+                      m + 1));
   const double brain = head.radii_m[0];
   for (Eigen::Index p = 0; p < points_m.cols(); ++p) {
     const double r = points_m.col(p).norm();
     if (!(r < brain))
-      throw InputError(fmt::format("Point {} lies {:g} mm from the centre, outside the innermost shell "
-                                   "({:g} mm): sources belong inside it. Are the points in the head frame "
-                                   "and in mm?", p + 1, r / kMillimetre, brain / kMillimetre));
+      throw InputError(
+          fmt::format("Point {} lies {:g} mm from the centre, outside the innermost shell "
+                      "({:g} mm): sources belong inside it. Are the points in the head frame "
+                      "and in mm?",
+                      p + 1, r / kMillimetre, brain / kMillimetre));
   }
 }
 
