@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+// Over 400 lines: one method for each section of the file.
 #include "app/key_reader.hpp"
 
 #include <headwater/app/experiment_file.hpp>

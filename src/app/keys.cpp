@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+// Over 400 lines: one table, one record for each key.
 #include <headwater/app/keys.hpp>
 
 #include <fmt/core.h>
