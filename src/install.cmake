@@ -10,7 +10,7 @@ install(TARGETS headwater_program RUNTIME DESTINATION ${CMAKE_INSTALL_BINDIR})
 install(DIRECTORY ${CMAKE_SOURCE_DIR}/include/headwater DESTINATION ${CMAKE_INSTALL_INCLUDEDIR}
         FILES_MATCHING PATTERN "*.hpp")
 
-# The targets file carries EIGEN_MAX_ALIGN_BYTES=32 to clients: they may be built without AVX, and
+# The targets file carries the EIGEN_MAX_*ALIGN_BYTES to clients: they may be built without AVX, and
 # still allocate matrices as the library does.
 install(EXPORT HeadwaterTargets NAMESPACE Headwater:: DESTINATION ${headwater_package_folder})
 configure_package_config_file(${CMAKE_SOURCE_DIR}/src/HeadwaterConfig.cmake.in

@@ -78,10 +78,43 @@ void check_columns(const Labels& columns, const std::string& source, std::string
       fmt::format("{}, line {}: {} cells found, {} expected.", source, line, found, expected));
 }
 
+/// One line of numbers into a row of the table, straight from the text.
+void parse_numbers(NumberTable& table, Eigen::Index row, std::string_view line, int number) {
+  const auto refuse = [&] {
+    refuse_ragged(table.source, number, line, line.empty() ? 0 : split_cells(line).size(),
+                  table.columns.size());
+  };
+  const auto width = table.values.cols();
+  const char *at = line.data(), *const end = at + line.size();
+  for (Eigen::Index column = 0;; ++column) {
+    double value = 0;
+    auto [after, error] = std::from_chars(at, end, value);
+    if (error != std::errc() || (after != end && *after != '\t') || !std::isfinite(value)) {
+      // Off the fast path: blanks and a plus sign are let pass; a wrong number of cells comes
+      // first.
+      if (line.empty() || std::count(line.begin(), line.end(), '\t') + 1 != width) refuse();
+      after = std::find(at, end, '\t');
+      const std::string_view cell(at, static_cast<std::size_t>(after - at));
+      const auto slow = finite_number(cell);
+      const auto& name = table.columns[static_cast<std::size_t>(column)];
+      if (!slow) throw InputError(not_a_number(table.source, number, name, cell));
+      value = *slow;
+    }
+    if ((after == end) != (column + 1 == width)) refuse();
+    table.values(row, column) = value;
+    if (after == end) return;
+    at = after + 1;
+  }
+}
+
 }  // namespace
 
 LineReader::LineReader(std::string_view text) : rest_(text) {
   while (!rest_.empty() && (rest_.back() == '\n' || rest_.back() == '\r')) rest_.remove_suffix(1);
+}
+
+std::size_t LineReader::lines_left() const {
+  return done_ ? 0 : 1 + static_cast<std::size_t>(std::count(rest_.begin(), rest_.end(), '\n'));
 }
 
 bool LineReader::next(std::string_view& line) {
@@ -163,46 +196,22 @@ Table read_table(const std::filesystem::path& path, std::string_view what) {
 }
 
 NumberTable parse_number_table(std::string_view text, const std::string& source) {
-  LineReader reader(checked_text(text, source));
+  text = checked_text(text, source);
+  LineReader reader(text);
   std::string_view line;
   reader.next(line);
   NumberTable table{source, split_cells(line), {}};
   check_columns(table.columns, source, line);
-  const std::size_t width = table.columns.size();
 
-  std::vector<double> values;  // row by row, as they stand in the text
-  while (reader.next(line)) {
-    if (values.empty()) values.reserve(width * (1 + text.size() / (line.size() + 1)));
-    const char *at = line.data(), *const end = at + line.size();
-    for (std::size_t column = 0;; ++column) {
-      double value = 0;
-      auto [after, error] = std::from_chars(at, end, value);
-      if (error != std::errc() || (after != end && *after != '\t') || !std::isfinite(value)) {
-        // Off the fast path: blanks and a plus sign are let pass; a wrong number of cells comes
-        // first.
-        const std::size_t found = split_cells(line).size();
-        if (found != width || line.empty())
-          refuse_ragged(source, reader.number(), line, found, width);
-        after = std::find(at, end, '\t');
-        const std::string_view cell(at, static_cast<std::size_t>(after - at));
-        const auto number = finite_number(cell);
-        if (!number)
-          throw InputError(not_a_number(source, reader.number(), table.columns[column], cell));
-        value = *number;
-      }
-      values.push_back(value);
-      at = after;
-      if ((at == end) != (column + 1 == width))
-        refuse_ragged(source, reader.number(), line, split_cells(line).size(), width);
-      if (at == end) break;
-      ++at;
-    }
-  }
-  if (values.empty()) throw InputError(source + ": no rows below the column names.");
-  using RowMajor = Eigen::Matrix<double, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>;
-  table.values =
-      Eigen::Map<const RowMajor>(values.data(), static_cast<Eigen::Index>(values.size() / width),
-                                 static_cast<Eigen::Index>(width));
+  // A good row has a digit and a tab or line end for each column: what a ragged table would waste
+  // is bounded by its own size.
+  const std::size_t most = text.size() / (2 * table.columns.size()) + 1;
+  const std::size_t rows = std::min(reader.lines_left(), most);
+  if (rows == 0) throw InputError(source + ": no rows below the column names.");
+  table.values.resize(static_cast<Eigen::Index>(rows),
+                      static_cast<Eigen::Index>(table.columns.size()));
+  for (Eigen::Index row = 0; reader.next(line); ++row)
+    parse_numbers(table, row, line, reader.number());
   return table;
 }
 

@@ -14,6 +14,7 @@ class LineReader {
  public:
   explicit LineReader(std::string_view text);
   bool next(std::string_view& line);
+  std::size_t lines_left() const;
   int number() const { return number_; }  ///< of the line last given, from 1
 
  private:

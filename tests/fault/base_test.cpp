@@ -10,6 +10,7 @@
 #include <headwater/base/toml.hpp>
 #include <headwater/base/vtk_grid.hpp>
 
+#include <fmt/core.h>
 #include <gtest/gtest.h>
 #include <nifti1.h>
 #include <sys/resource.h>
@@ -61,6 +62,14 @@ TEST(BaseTableFault, RaggedRowsSayLineFoundAndExpected) {
     expect_parts(fault("a\tb\n1\t2\t\n"), {"line 2", "3 cells found", "2 expected"});
   }
   expect_parts(number_fault("a\tb\tc\nx\t2\n"), {"line 2", "2 cells found"});
+}
+
+// 10^5 columns and 10^5 lines of one cell: the matrix they announce would take 80 GB.
+TEST(BaseTableFault, RaggedRowsAllocateNoMoreThanTheText) {
+  std::string text = "c0", lines;
+  for (int i = 1; i < 100000; ++i) text += fmt::format("\tc{}", i);
+  for (int i = 0; i < 100000; ++i) lines += "\n1";
+  expect_parts(number_fault(text + lines), {"line 2", "1 cells found", "100000 expected"});
 }
 
 TEST(BaseTableFault, CellsThatAreNoFiniteNumber) {
