@@ -2,7 +2,7 @@
 // What must not change a source map: the reference of data and lead field, the order of the
 // channels, the unit of the volts, whether a contrast's noise is given by its scale or as its own
 // covariance. And a mirrored scalp map gives the mirrored source map.
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/inverse/eloreta.hpp>
 #include <headwater/inverse/estimate.hpp>
@@ -174,6 +174,28 @@ TEST(InverseInvariance, MirrorOfTheHead) {
     expect_same(lengths(image), lengths(expected), method.name);
     if (method.in_volts) expect_same(image, expected, method.name);
   }
+}
+
+// The fit that is reported, from the spectrum, is that of the estimate: y - K J in sensor space.
+TEST(InverseInvariance, FitIsThatOfTheEstimate) {
+  const InverseCase& c = coarse_case();
+  const MatrixXd data = example_data(c), y = c.subspace.basis.transpose() * data;
+  const auto explained = [&](const SourceOperator& inverse) {
+    const MatrixXd j = estimate_sources(inverse, data).components;
+    return 1 - (y - c.subspace.gain * j).squaredNorm() / y.squaredNorm();
+  };
+  const auto stated = [&](const GramSpectrum& spectrum, double lambda) {
+    const MatrixXd z = spectrum_map(c.subspace, spectrum) * data;
+    return ridge_fit(c.subspace, spectrum, z, lambda * kNoiseScale, kNoiseScale).explained_variance;
+  };
+  const MinimumNorm plain(c.subspace, 0.8);
+  const double lambda = gcv_lambda(c.subspace, plain.spectrum(), data, kNoiseScale);
+  EXPECT_NEAR(stated(plain.spectrum(), lambda), explained(plain.at(lambda, kNoiseScale)), 1e-8);
+  // eLORETA's spectrum is that of weights adapted to a first guess of lambda.
+  Eloreta exact(c.subspace);
+  exact.adapt(gcv_lambda(c.subspace, exact.spectrum(), data, kNoiseScale), kNoiseScale);
+  const double adapted = gcv_lambda(c.subspace, exact.spectrum(), data, kNoiseScale);
+  EXPECT_NEAR(stated(exact.spectrum(), adapted), explained(exact.at(adapted, kNoiseScale)), 0.01);
 }
 
 // The subspace itself: whitener, and refusal of what is no covariance.

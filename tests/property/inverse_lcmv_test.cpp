@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Constraints that beamformer filters keep to rounding, whatever the data.
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/inverse/estimate.hpp>
 #include <headwater/inverse/lcmv.hpp>

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/base/random.hpp>
 #include <headwater/base/units.hpp>
@@ -65,7 +65,8 @@ TEST(Regularisation, GcvIsTheMinimumByBruteForce) {
     };
     EXPECT_FALSE(choice.gcv_at_edge);
     EXPECT_EQ(choice.used, choice.gcv);
-    for (double power = -10; power <= 4; power += 0.005)
+    // Eigenvalues below 1e-12 of the largest count as zero: the search is from a tenth of that.
+    for (double power = -13; power <= 1; power += 0.005)
       EXPECT_GE(score(shaw.spectrum.values.maxCoeff() * std::pow(10, power)),
                 score(choice.gcv) * (1 - 1e-9));
   }
@@ -81,7 +82,7 @@ TEST(Regularisation, LCurveCornerHasTheLargestCurvature) {
     const Eigen::ArrayXd d = shaw.spectrum.values;
     const double step = 0.01;
     std::vector<Eigen::Vector2d> curve;
-    for (double power = -10; power <= 4; power += step) {
+    for (double power = -13; power <= 1; power += step) {
       const double lambda = d.maxCoeff() * std::pow(10, power);
       curve.emplace_back(std::log((lambda / (d + lambda) * z.array()).matrix().norm()),
                          std::log((d.sqrt() / (d + lambda) * z.array()).matrix().norm()));
@@ -94,7 +95,7 @@ TEST(Regularisation, LCurveCornerHasTheLargestCurvature) {
           (first.x() * second.y() - first.y() * second.x()) / std::pow(first.norm(), 3);
       if (bend > sharpest) {
         sharpest = bend;
-        corner = -10 + step * static_cast<double>(i);
+        corner = -13 + step * static_cast<double>(i);
       }
     }
     const auto choice = choose_regularisation(d, z, {Kind::l_curve, 3});
@@ -154,18 +155,31 @@ TEST(Regularisation, SnrMeansWhatItSays) {
 }
 
 TEST(Regularisation, EdgesAreSaid) {
-  RandomStream random(5, "edges");
   const Eigen::VectorXd d = Eigen::VectorXd::LinSpaced(30, -6, 0).array().exp();
-  // Noise alone, with more in the strong directions left out: nothing to keep.
+  // Less in the strong directions than in the weak ones: nothing to keep.
   Eigen::MatrixXd weak = Eigen::MatrixXd::Ones(30, 1);
   weak.bottomRows(15) *= 0.1;
   const auto none = choose_regularisation(d, weak, {});
   EXPECT_TRUE(none.gcv_at_edge);
-  EXPECT_NEAR(none.gcv / d.maxCoeff(), 1e4, 1e-6 * 1e4);
-  // No noise at all: the smoother the sum, the smaller lambda.
-  const Eigen::MatrixXd strong = d.array().square();
-  const auto all = choose_regularisation(d, strong, {});
-  EXPECT_LE(all.gcv, 1e-6 * d.maxCoeff());
+  EXPECT_NEAR(none.gcv, 10 * d.maxCoeff(), 1e-9);
+  EXPECT_EQ(none.rule, "gcv");
+}
+
+// Without noise the score falls without end; then lambda is the one whose residual is the noise.
+TEST(Regularisation, DiscrepancyStandsInForGcv) {
+  const Eigen::VectorXd d = Eigen::VectorXd::LinSpaced(30, -6, 0).array().exp();
+  const Eigen::MatrixXd strong = 100 * d.array().square() * Eigen::ArrayXd::Ones(30);
+  const auto choice = choose_regularisation(d, strong, {});
+  EXPECT_TRUE(choice.gcv_at_edge);
+  EXPECT_EQ(choice.used, choice.discrepancy);
+  EXPECT_NE(choice.rule.find("discrepancy"), std::string::npos) << choice.rule;
+  const Eigen::ArrayXd f = choice.used / (d.array() + choice.used);
+  EXPECT_NEAR((f * strong.col(0).array()).square().mean(), 1, 1e-9);
+  // All of it below the noise: no lambda leaves a residual as large as the noise.
+  const auto small = choose_regularisation(d, 0.01 * strong, {});
+  EXPECT_TRUE(std::isnan(small.discrepancy));
+  EXPECT_EQ(small.used, small.snr3);
+  EXPECT_NE(small.rule.find("snr 3"), std::string::npos) << small.rule;
 }
 
 // Residual and signal in noise units: data made of noise alone, left alone, are 1 and 1.

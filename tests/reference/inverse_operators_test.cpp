@@ -1,9 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The four inverses against the formulas as printed (src/reference/inverses), on a small case with
 // noise that is far from spherical.
+#include "inverse_support.hpp"
 #include "reference/inverses.hpp"
-
-#include "inverse_case.hpp"
 
 #include <headwater/inverse/eloreta.hpp>
 #include <headwater/inverse/estimate.hpp>

@@ -2,7 +2,7 @@
 // One noise-free source: sLORETA (Pascual-Marqui 2002 Methods Find Exp Clin Pharmacol 24D:5) and
 // eLORETA (2007 arXiv:0710.3341) put the largest value exactly where it is, at every node,
 // orientation and lambda, whatever the noise covariance. The minimum norm does not.
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/inverse/eloreta.hpp>
 #include <headwater/inverse/estimate.hpp>

@@ -53,8 +53,9 @@ struct ContrastCase {
 void follow(const ContrastCase& c, const SourceOperator& inverse) {
   const SourceEstimate estimate = estimate_sources(inverse, c.data);
   const RegionCourses courses = region_courses(inverse, estimate, c.data, c.lobes, c.outward);
-  const auto indices = power_indices(inverse, c.data, kWindow, c.subspace.basis,
-                                     kNoiseScale * c.subspace.noise_V2, c.lobes, {});
+  const auto indices =
+      PowerIndices(inverse, c.subspace.basis, kNoiseScale * c.subspace.noise_V2, c.lobes, {})
+          .at(c.data, kWindow);
   benchmark::DoNotOptimize(courses.projected.data());
   benchmark::DoNotOptimize(indices.data());
 }

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Covariances and sizes that no inverse should accept in silence.
 #include "base_scratch.hpp"
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/base/error.hpp>
 #include <headwater/inverse/lcmv.hpp>

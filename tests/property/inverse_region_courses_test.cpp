@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/inverse/lcmv.hpp>
 #include <headwater/inverse/region_courses.hpp>

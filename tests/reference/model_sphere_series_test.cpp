@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Shell factors against printed values and against the boundary conditions solved as they stand.
-#include "shell_boundary.hpp"
+#include "model_shell_boundary.hpp"
 
 #include <headwater/base/random.hpp>
 #include <headwater/model/head.hpp>

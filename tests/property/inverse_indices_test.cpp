@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include "inverse_case.hpp"
+#include "inverse_support.hpp"
 
 #include <headwater/inverse/indices.hpp>
 #include <headwater/inverse/sloreta.hpp>
@@ -34,8 +34,9 @@ struct IndexCase {
     IndexOptions options;
     options.draws = draws;
     options.stream = "test";
-    return power_indices(inverse, data, kWindow, c.subspace.basis,
-                         kNoiseScale * c.subspace.noise_V2, lobes, options);
+    return PowerIndices(inverse, c.subspace.basis, kNoiseScale * c.subspace.noise_V2, lobes,
+                        options)
+        .at(data, kWindow);
   }
 };
 
