@@ -1,16 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "app/key_reader.hpp"
+
 #include <headwater/app/experiment_file.hpp>
-
-#include <algorithm>
-#include <set>
-
-#include <fmt/core.h>
-
 #include <headwater/base/error.hpp>
 #include <headwater/base/table.hpp>
 #include <headwater/base/units.hpp>
 
-#include "app/key_reader.hpp"
+#include <fmt/core.h>
+
+#include <algorithm>
+#include <set>
 
 namespace headwater {
 namespace {
@@ -64,8 +63,9 @@ class Assembly {
     out_.averages_pattern = pattern.empty() ? "" : absolute(pattern).string();
     for (const char* part : {"{participant}", "{condition}"})
       if (!pattern.empty() && pattern.find(part) == std::string::npos)
-        keys_.problem(keys_.find("averages.file"),
-                      fmt::format("'averages.file' lacks {}: the name of each file must say it.", part));
+        keys_.problem(
+            keys_.find("averages.file"),
+            fmt::format("'averages.file' lacks {}: the name of each file must say it.", part));
     if (const auto* counts = keys_.find("averages.counts")) {
       if (counts->is_number())
         out_.trials_each = counts->number();
@@ -73,7 +73,9 @@ class Assembly {
         out_.counts_table = optional_path("averages.counts");
     }
     const std::string unit = fold_case(keys_.text("averages.unit"));
-    out_.unit = unit == "v" ? VoltageUnit::volt : unit == "mv" ? VoltageUnit::millivolt : VoltageUnit::microvolt;
+    out_.unit = unit == "v"    ? VoltageUnit::volt
+                : unit == "mv" ? VoltageUnit::millivolt
+                               : VoltageUnit::microvolt;
   }
 
   void read_conditions() {
@@ -151,7 +153,8 @@ class Assembly {
       ContrastPlan plan{text_of(*entry, "name"), {}};
       const auto *weights = entry->find("weights"), *effect = entry->find("effect");
       if ((weights != nullptr) == (effect != nullptr)) {
-        keys_.problem(entry, fmt::format("contrast '{}' needs either weights or an effect.", plan.name));
+        keys_.problem(entry,
+                      fmt::format("contrast '{}' needs either weights or an effect.", plan.name));
       } else if (weights && weights->is_table()) {
         read_weights(*weights, plan);
       } else if (effect && effect->is_table()) {
@@ -159,8 +162,9 @@ class Assembly {
       }
       for (const auto& other : out_.contrasts)
         if (file_label(other.name) == file_label(plan.name))
-          keys_.problem(entry, fmt::format("contrasts '{}' and '{}' would share their files: rename one.",
-                                           other.name, plan.name));
+          keys_.problem(entry,
+                        fmt::format("contrasts '{}' and '{}' would share their files: rename one.",
+                                    other.name, plan.name));
       out_.contrasts.push_back(plan);
     }
     if (keys_.has("contrasts")) return;
@@ -175,8 +179,10 @@ class Assembly {
     for (const auto& [name, value] : std::get<TomlValue::Table>(weights.value)) {
       if (!value.is_number()) return;
       if (!find_label(names, name))
-        keys_.problem(&value, fmt::format("contrast '{}' weights condition '{}', which is not one of "
-                                          "[[conditions]].{}", plan.name, name, did_you_mean(name, names)));
+        keys_.problem(&value,
+                      fmt::format("contrast '{}' weights condition '{}', which is not one of "
+                                  "[[conditions]].{}",
+                                  plan.name, name, did_you_mean(name, names)));
       if (value.number() == 0) continue;
       any = true;
       plan.weights.push_back({name, value.number()});
@@ -190,8 +196,8 @@ class Assembly {
       if (!levels.is_array()) return;
       const auto& pair = std::get<TomlValue::Array>(levels.value);
       if (pair.size() != 2 || !pair[0].is_text() || !pair[1].is_text()) return;
-      factors.push_back({factor, std::get<std::string>(pair[0].value),
-                         std::get<std::string>(pair[1].value)});
+      factors.push_back(
+          {factor, std::get<std::string>(pair[0].value), std::get<std::string>(pair[1].value)});
     }
     try {
       plan.weights = effect_weights(out_.conditions, factors);
@@ -216,12 +222,14 @@ class Assembly {
                                            window.name, name, did_you_mean(name, contrasts)));
       for (const auto& other : out_.windows)
         if (file_label(other.name) == file_label(window.name))
-          keys_.problem(entry, fmt::format("windows '{}' and '{}' would share their files: rename one.",
-                                           other.name, window.name));
+          keys_.problem(entry,
+                        fmt::format("windows '{}' and '{}' would share their files: rename one.",
+                                    other.name, window.name));
       out_.windows.push_back(window);
     }
     if (!keys_.has("windows"))
-      keys_.problem(nullptr, "no [[windows]]: name at least one latency window (name, from_ms, to_ms).");
+      keys_.problem(nullptr,
+                    "no [[windows]]: name at least one latency window (name, from_ms, to_ms).");
   }
 
   void read_montage() {
@@ -229,9 +237,11 @@ class Assembly {
     if (positions != "standard") {
       out_.positions = absolute(positions).string();
       if (positions.find("{participant}") == std::string::npos && !fs::exists(out_.positions))
-        keys_.problem(keys_.find("montage.positions"),
-                      fmt::format("'montage.positions': there is no file {} (\"standard\" takes the "
-                                  "10-5 names).", out_.positions));
+        keys_.problem(
+            keys_.find("montage.positions"),
+            fmt::format("'montage.positions': there is no file {} (\"standard\" takes the "
+                        "10-5 names).",
+                        out_.positions));
     }
     out_.position_space =
         fold_case(keys_.text("montage.space")) == "mni" ? PositionSpace::mni : PositionSpace::head;
@@ -246,8 +256,9 @@ class Assembly {
     const auto* radius = keys_.find("head.radius_mm");
     out_.fit_radius = radius && radius->is_text();
     if (out_.fit_radius && out_.positions == "standard")
-      keys_.problem(radius, "'head.radius_mm' is \"fit\", but standard positions have no measured "
-                            "radius: give a number or a table of positions.");
+      keys_.problem(radius,
+                    "'head.radius_mm' is \"fit\", but standard positions have no measured "
+                    "radius: give a number or a table of positions.");
     const double scalp_m = (out_.fit_radius ? 92 : keys_.number("head.radius_mm")) * kMillimetre;
     const auto shells = keys_.numbers("head.shells");
     const auto sigma = keys_.numbers("head.conductivity_S_per_m");
@@ -261,9 +272,11 @@ class Assembly {
     try {
       check_head(out_.head);
       if (out_.head.radii_m.size() > 0 && !keys_.has("grid.points") && shells[0] < 0.83)
-        keys_.problem(keys_.find("head.shells"),
-                      fmt::format("the innermost shell ends at {:g} of the scalp's radius, but the template "
-                                  "brain reaches 0.83: sources would lie in the skull.", shells[0]));
+        keys_.problem(
+            keys_.find("head.shells"),
+            fmt::format("the innermost shell ends at {:g} of the scalp's radius, but the template "
+                        "brain reaches 0.83: sources would lie in the skull.",
+                        shells[0]));
     } catch (const Error& error) {
       keys_.problem(keys_.find("head.shells"), error.what());
     }
@@ -272,7 +285,8 @@ class Assembly {
   void read_grid() {
     out_.spacing_m = keys_.number("grid.spacing_mm") * kMillimetre;
     out_.points_table = optional_path("grid.points");
-    out_.point_space = fold_case(keys_.text("grid.space")) == "head" ? PointSpace::head : PointSpace::mni;
+    out_.point_space =
+        fold_case(keys_.text("grid.space")) == "head" ? PointSpace::head : PointSpace::mni;
     out_.atlas = optional_path("grid.atlas");
     out_.atlas_table = optional_path("grid.atlas_table");
     if (out_.atlas.has_value() != out_.atlas_table.has_value())
@@ -285,15 +299,17 @@ class Assembly {
     if (from == "residual") {
       out_.noise.from = NoiseOptions::From::residual;
       if (!keys_.has("noise.after_ms"))
-        keys_.problem(keys_.find("noise.from"), "'noise.after_ms' is missing: the latency from which what "
-                                                "is left counts as noise.");
+        keys_.problem(keys_.find("noise.from"),
+                      "'noise.after_ms' is missing: the latency from which what "
+                      "is left counts as noise.");
       out_.noise.after_s = keys_.number("noise.after_ms") * kMillisecond;
     } else if (from == "table") {
       out_.noise.from = NoiseOptions::From::table;
       if (const auto table = optional_path("noise.table"))
         out_.noise.table = *table;
       else
-        keys_.problem(keys_.find("noise.from"), "'noise.table' is missing: the covariance to read.");
+        keys_.problem(keys_.find("noise.from"),
+                      "'noise.table' is missing: the covariance to read.");
     }
     if (const auto window = keys_.numbers("noise.baseline_ms"); window.size() == 2) {
       out_.noise.baseline_from_s = window[0] * kMillisecond;
@@ -306,11 +322,14 @@ class Assembly {
   }
 
   void read_inverse() {
-    for (const auto& method : keys_.texts("inverse.methods")) out_.methods.push_back(fold_case(method));
+    for (const auto& method : keys_.texts("inverse.methods"))
+      out_.methods.push_back(fold_case(method));
     for (const auto& repeated : repeated_labels(out_.methods))
-      keys_.problem(keys_.find("inverse.methods"), fmt::format("method '{}' is there twice.", repeated));
+      keys_.problem(keys_.find("inverse.methods"),
+                    fmt::format("method '{}' is there twice.", repeated));
     if (out_.methods.empty())
-      keys_.problem(keys_.find("inverse.methods"), "'inverse.methods' is empty: name at least one.");
+      keys_.problem(keys_.find("inverse.methods"),
+                    "'inverse.methods' is empty: name at least one.");
     out_.depth_exponent = keys_.number("inverse.depth_exponent");
     using Kind = RegularisationRule::Kind;
     if (fold_case(keys_.text("inverse.regularisation")) == "l-curve")
@@ -327,7 +346,7 @@ class Assembly {
     out_.lcmv.regularisation = keys_.number("lcmv.regularisation");
     out_.lcmv.mirror_paired = keys_.flag("lcmv.mirror_paired");
     const std::string output = fold_case(keys_.text("lcmv.output"));
-    out_.lcmv.output = output == "unit-gain"         ? LcmvOptions::Output::unit_gain
+    out_.lcmv.output = output == "unit-gain"        ? LcmvOptions::Output::unit_gain
                        : output == "activity-index" ? LcmvOptions::Output::activity_index
                                                     : LcmvOptions::Output::unit_noise_gain;
     out_.lcmv.orientation = fold_case(keys_.text("lcmv.orientation")) == "vector"
@@ -337,8 +356,8 @@ class Assembly {
 
   void read_regions() {
     for (const auto* entry : keys_.entries("regions")) {
-      RegionRequest request{text_of(*entry, "name"), texts_of(*entry, "gyri"), text_of(*entry, "lobe"),
-                            fold_case(text_of(*entry, "side"))};
+      RegionRequest request{text_of(*entry, "name"), texts_of(*entry, "gyri"),
+                            text_of(*entry, "lobe"), fold_case(text_of(*entry, "side"))};
       if (request.gyri.empty() == request.lobe.empty())
         keys_.problem(entry, fmt::format("region '{}' needs either gyri or a lobe.", request.name));
       out_.regions.push_back(request);
@@ -375,7 +394,8 @@ std::filesystem::path fill_pattern(const std::string& pattern, const std::string
 std::vector<TimeWindow> windows_of(const Experiment& experiment, const std::string& contrast) {
   std::vector<TimeWindow> windows;
   for (const auto& window : experiment.windows)
-    if (window.contrasts.empty() || find_label(window.contrasts, contrast)) windows.push_back(window);
+    if (window.contrasts.empty() || find_label(window.contrasts, contrast))
+      windows.push_back(window);
   return windows;
 }
 

@@ -1,16 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/app/figures.hpp>
-
-#include <cmath>
+#include <headwater/base/error.hpp>
+#include <headwater/base/nifti.hpp>
+#include <headwater/base/units.hpp>
+#include <headwater/view/source_picture.hpp>
 
 #include <Eigen/Geometry>
 #include <Eigen/LU>
 #include <fmt/core.h>
 
-#include <headwater/base/error.hpp>
-#include <headwater/base/nifti.hpp>
-#include <headwater/base/units.hpp>
-#include <headwater/view/source_picture.hpp>
+#include <cmath>
 
 namespace headwater {
 namespace {
@@ -60,14 +59,15 @@ void add_marks(SourcePicture& picture, const fs::path& peaks_file, const std::st
     mark.mni_mm = places.col(static_cast<Eigen::Index>(row));
     mark.pair = pair;
     mark.label = fmt::format("{}", pair ? (mark.mni_mm.x() < 0 ? 'L' : 'R') : 'P');
-    const std::string strength =
-        cell(row, "unit") == "n/a" ? cell(row, "value")
-                                   : fmt::format("{} {}", cell(row, "value"), cell(row, "unit"));
+    const std::string strength = cell(row, "unit") == "n/a"
+                                     ? cell(row, "value")
+                                     : fmt::format("{} {}", cell(row, "value"), cell(row, "unit"));
     mark.caption = fmt::format("{}  {} {} {}  ({:.0f}, {:.0f}, {:.0f}) mm  {}", mark.label,
                                pair ? "pair," : "peak,", cell(row, "side"), cell(row, "gyrus"),
                                mark.mni_mm.x(), mark.mni_mm.y(), mark.mni_mm.z(), strength);
     if (!pair) {
-      mark.caption += fmt::format("  {} ms, depth {} mm", cell(row, "latency_ms"), cell(row, "depth_mm"));
+      mark.caption +=
+          fmt::format("  {} ms, depth {} mm", cell(row, "latency_ms"), cell(row, "depth_mm"));
       false_peak = cell(row, "note") != "n/a";
       if (false_peak) mark.caption += "  likely false";
       peak_marked = true;
@@ -75,12 +75,13 @@ void add_marks(SourcePicture& picture, const fs::path& peaks_file, const std::st
     picture.marks.push_back(mark);
   }
   if (false_peak)
-    picture.notes.push_back("A mirrored pair of dipoles explains the scalp map better than any one point: the "
-                            "map's maximum P is likely two symmetric generators merged.");
+    picture.notes.push_back(
+        "A mirrored pair of dipoles explains the scalp map better than any one point: the "
+        "map's maximum P is likely two symmetric generators merged.");
 }
 
-void add_scalp(SourcePicture& picture, const fs::path& waveform_file, const fs::path& electrodes_file,
-               const TimeWindow& window) {
+void add_scalp(SourcePicture& picture, const fs::path& waveform_file,
+               const fs::path& electrodes_file, const TimeWindow& window) {
   const NumberTable waveform = read_number_table(waveform_file, "contrast waveform");
   const SampleRange samples = samples_in(waveform.values.col(0), window);
   picture.channels.assign(waveform.columns.begin() + 1, waveform.columns.end());
@@ -103,24 +104,28 @@ fs::path draw_one(const Experiment& experiment, const ResultsFolder& results,
                   const std::string& method, const TimeWindow& window) {
   const fs::path map = results.file(participant, contrast, method, window.name, "sources.nii.gz");
   if (!fs::exists(map))
-    throw InputError(fmt::format("There is no {}: run `headwater locate` first (maps are written for the "
-                                 "lattice, not for points of your own).", map.string()));
+    throw InputError(
+        fmt::format("There is no {}: run `headwater locate` first (maps are written for the "
+                    "lattice, not for points of your own).",
+                    map.string()));
   const Json fit =
       read_json(results.file(participant, contrast, method, "", "fit.json"), "fit of the estimate");
   SourcePicture picture;
   picture.title = fmt::format("{}, {:g} to {:g} ms ({})", contrast, window.from_s / kMillisecond,
                               window.to_s / kMillisecond, window.name);
-  picture.subtitle = fmt::format("{}{} · {} · regularisation: {}",
-                                 experiment.title.empty() ? "" : fmt::format("{} · ", experiment.title),
-                                 participant == kMeanName ? "mean over participants" : participant, method,
-                                 fit.find("Regularisation")->find("Rule")->text());
+  picture.subtitle =
+      fmt::format("{}{} · {} · regularisation: {}",
+                  experiment.title.empty() ? "" : fmt::format("{} · ", experiment.title),
+                  participant == kMeanName ? "mean over participants" : participant, method,
+                  fit.find("Regularisation")->find("Rule")->text());
   picture.value_name = fit.find("Quantity")->text();
   picture.unit = fit.find("Unit")->is_null() ? "" : fit.find("Unit")->text();
   add_map(picture, map, own_or_shared(results.root(), participant, "grid.tsv"));
   add_marks(picture, results.file(participant, contrast, method, "", "peaks.tsv"), window.name);
   add_scalp(picture, results.file(participant, contrast, "", "", "waveform.tsv"),
             own_or_shared(results.root(), participant, "electrodes.tsv"), window);
-  picture.notes.push_back("Template head, spherical model: read positions in centimetres. Research use only.");
+  picture.notes.push_back(
+      "Template head, spherical model: read positions in centimetres. Research use only.");
   fs::path file = results.root() / "figures" / map.filename();
   file.replace_extension().replace_extension(".png");
   write_source_picture(file, picture);

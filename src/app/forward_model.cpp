@@ -1,6 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/app/forward_model.hpp>
-
 #include <headwater/base/error.hpp>
 #include <headwater/base/table.hpp>
 #include <headwater/base/units.hpp>
@@ -18,8 +17,7 @@ SourceGrid read_points(const Experiment& experiment, double scalp_radius_m) {
   for (std::size_t row = 0; row < table.rows.size(); ++row) {
     names.push_back(table.rows[row][name]);
     for (Eigen::Index axis = 0; axis < 3; ++axis)
-      points(axis, static_cast<Eigen::Index>(row)) =
-          table.number(row, columns[axis]) * kMillimetre;
+      points(axis, static_cast<Eigen::Index>(row)) = table.number(row, columns[axis]) * kMillimetre;
   }
   if (const auto repeated = repeated_labels(names); !repeated.empty())
     throw InputError(table.source + ": repeated point names: " + join_labels(repeated) + ".");
@@ -45,8 +43,9 @@ std::shared_ptr<const ForwardModel> build_forward_model(const Experiment& experi
   model->labels = experiment.atlas ? atlas_labels(grid, *experiment.atlas, *experiment.atlas_table)
                                    : template_labels(grid);
   model->lobes = lobe_regions(model->labels);
-  model->regions = experiment.regions.empty() ? model->lobes
-                                              : requested_regions(model->labels, experiment.regions);
+  model->regions = experiment.regions.empty()
+                       ? model->lobes
+                       : requested_regions(model->labels, experiment.regions);
   model->neighbours = grid_neighbours(grid);
   model->outward = grid.head_m.colwise().normalized();
   model->gain = compute_gain(model->head, montage.positions, grid.head_m);

@@ -1,10 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "app/key_reader.hpp"
 
+#include <fmt/core.h>
+
 #include <algorithm>
 #include <cmath>
-
-#include <fmt/core.h>
 
 namespace headwater {
 namespace {
@@ -48,7 +48,8 @@ Labels names_within(const std::string& prefix) {
 bool is_text_list(const TomlValue& value) {
   if (!value.is_array()) return false;
   const auto& items = std::get<TomlValue::Array>(value.value);
-  return std::all_of(items.begin(), items.end(), [](const TomlValue& item) { return item.is_text(); });
+  return std::all_of(items.begin(), items.end(),
+                     [](const TomlValue& item) { return item.is_text(); });
 }
 
 bool has_type(const TomlValue& value, KeyType type) {
@@ -60,24 +61,32 @@ bool has_type(const TomlValue& value, KeyType type) {
   };
   switch (type) {
     case T::text:
-    case T::path: return value.is_text();
-    case T::number: return value.is_number();
-    case T::whole_number: return std::holds_alternative<long long>(value.value);
-    case T::true_false: return std::holds_alternative<bool>(value.value);
-    case T::text_list: return is_text_list(value);
+    case T::path:
+      return value.is_text();
+    case T::number:
+      return value.is_number();
+    case T::whole_number:
+      return std::holds_alternative<long long>(value.value);
+    case T::true_false:
+      return std::holds_alternative<bool>(value.value);
+    case T::text_list:
+      return is_text_list(value);
     case T::number_list: {
       if (!value.is_array()) return false;
       const auto& items = std::get<TomlValue::Array>(value.value);
       return std::all_of(items.begin(), items.end(),
                          [](const TomlValue& item) { return item.is_number(); });
     }
-    case T::text_map: return all_members([](const TomlValue& v) { return v.is_text(); });
-    case T::number_map: return all_members([](const TomlValue& v) { return v.is_number(); });
+    case T::text_map:
+      return all_members([](const TomlValue& v) { return v.is_text(); });
+    case T::number_map:
+      return all_members([](const TomlValue& v) { return v.is_number(); });
     case T::effect_map:
       return all_members([](const TomlValue& v) {
         return is_text_list(v) && std::get<TomlValue::Array>(v.value).size() == 2;
       });
-    case T::number_or_text: return value.is_number() || value.is_text();
+    case T::number_or_text:
+      return value.is_number() || value.is_text();
     case T::rule: {
       if (value.is_text()) return true;
       if (!value.is_table()) return false;
@@ -171,9 +180,9 @@ void KeyReader::check_number(const TomlValue& value, const KeyRecord& record) {
   const double number = value.number();
   if (!std::isfinite(number) ||
       (record.least < record.most && !(number >= record.least && number <= record.most)))
-    problem(&value, fmt::format("'{}' is {:g}: expected {:g} to {:g}{}{}.", record.name, number,
-                                record.least, record.most, record.unit.empty() ? "" : " ",
-                                record.unit));
+    problem(&value,
+            fmt::format("'{}' is {:g}: expected {:g} to {:g}{}{}.", record.name, number,
+                        record.least, record.most, record.unit.empty() ? "" : " ", record.unit));
 }
 
 void KeyReader::check_text(const TomlValue& value, const KeyRecord& record) {
@@ -187,8 +196,7 @@ void KeyReader::check_text(const TomlValue& value, const KeyRecord& record) {
 void KeyReader::check_value(const TomlValue& value, const KeyRecord& record) {
   if (!has_type(value, record.type)) {
     std::string expected = type_name(record.type);
-    if (record.type == T::effect_map)
-      expected = "{ factor = [\"first level\", \"second level\"] }";
+    if (record.type == T::effect_map) expected = "{ factor = [\"first level\", \"second level\"] }";
     if (record.type == T::rule)
       expected = "\"gcv\", \"l-curve\", { snr = number } or { lambda = number }, above 0";
     problem(&value, fmt::format("'{}' is {}: expected {}.", record.name, value.kind(), expected));
@@ -203,7 +211,9 @@ void KeyReader::check_value(const TomlValue& value, const KeyRecord& record) {
     }
 }
 
-const TomlValue* KeyReader::find(const std::string& key) const { return find_in(*root_, key); }
+const TomlValue* KeyReader::find(const std::string& key) const {
+  return find_in(*root_, key);
+}
 
 std::string KeyReader::text(const std::string& key) const {
   const auto* value = find(key);
@@ -229,7 +239,8 @@ std::vector<double> KeyReader::numbers(const std::string& key) const {
   if (!value) value = find_in(defaults_, key);
   std::vector<double> numbers;
   if (value && has_type(*value, T::number_list))
-    for (const auto& item : std::get<TomlValue::Array>(value->value)) numbers.push_back(item.number());
+    for (const auto& item : std::get<TomlValue::Array>(value->value))
+      numbers.push_back(item.number());
   return numbers;
 }
 

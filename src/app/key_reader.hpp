@@ -2,13 +2,13 @@
 // Checks a TOML tree against key_records() and hands out values with their defaults. Collects every
 // problem, with file:line:column, instead of stopping at the first.
 #pragma once
-#include <optional>
-#include <string>
-#include <vector>
-
 #include <headwater/app/keys.hpp>
 #include <headwater/base/labels.hpp>
 #include <headwater/base/toml.hpp>
+
+#include <optional>
+#include <string>
+#include <vector>
 
 namespace headwater {
 
@@ -23,7 +23,7 @@ class KeyReader {
   /// Value of "head.radius_mm" or, within an entry of [[contrasts]], of "name". Null where absent.
   const TomlValue* find(const std::string& key) const;
   bool has(const std::string& key) const { return find(key) != nullptr; }
-  std::string text(const std::string& key) const;      ///< the default where absent
+  std::string text(const std::string& key) const;  ///< the default where absent
   double number(const std::string& key) const;
   std::vector<double> numbers(const std::string& key) const;
   Labels texts(const std::string& key) const;

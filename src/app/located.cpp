@@ -1,10 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/app/located.hpp>
-
-#include <limits>
-#include <optional>
-#include <set>
-
 #include <headwater/base/error.hpp>
 #include <headwater/inverse/eloreta.hpp>
 #include <headwater/inverse/estimate.hpp>
@@ -12,6 +7,10 @@
 #include <headwater/inverse/minimum_norm.hpp>
 #include <headwater/inverse/sloreta.hpp>
 #include <headwater/signal/noise_covariance.hpp>
+
+#include <limits>
+#include <optional>
+#include <set>
 
 namespace headwater {
 namespace {
@@ -49,7 +48,8 @@ struct Locator::Engine {
   std::unique_ptr<DipoleScan> scan;
 
   /// Spectrum for the fit, empty for LCMV.
-  std::optional<GramSpectrum> estimate(const Experiment& experiment, const ParticipantData& participant,
+  std::optional<GramSpectrum> estimate(const Experiment& experiment,
+                                       const ParticipantData& participant,
                                        const std::string& method, const Eigen::MatrixXd& data_V,
                                        double scale, LocatedContrast& located);
 };

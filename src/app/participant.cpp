@@ -1,10 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/app/participant.hpp>
-
-#include <algorithm>
-
 #include <headwater/base/error.hpp>
 #include <headwater/base/table.hpp>
+
+#include <algorithm>
 
 namespace headwater {
 
@@ -58,7 +57,8 @@ ParticipantData mean_participant(const Experiment& experiment,
   SphereFit sphere = participants[0]->forward->sphere;
   double radius = 0;
   for (const auto* participant : participants) {
-    const Montage own = select_positions(participant->forward->montage, channels, participant->name);
+    const Montage own =
+        select_positions(participant->forward->montage, channels, participant->name);
     montage.positions += own.positions / static_cast<double>(participants.size());
     radius += participant->forward->sphere.radius / static_cast<double>(participants.size());
   }

@@ -1,10 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "app/results_tables.hpp"
+
 #include <headwater/app/results_folder.hpp>
-
-#include <cmath>
-
-#include <fmt/core.h>
-
 #include <headwater/base/atomic_file.hpp>
 #include <headwater/base/nifti.hpp>
 #include <headwater/base/units.hpp>
@@ -12,7 +9,9 @@
 #include <headwater/base/vtk_grid.hpp>
 #include <headwater/signal/reference.hpp>
 
-#include "app/results_tables.hpp"
+#include <fmt/core.h>
+
+#include <cmath>
 
 namespace headwater {
 namespace {
@@ -43,9 +42,12 @@ Volume source_volume(const ForwardModel& forward, const Eigen::Ref<const Eigen::
   return volume;
 }
 
-std::string with_suffix(const fs::path& base, const char* suffix) { return base.string() + suffix; }
+std::string with_suffix(const fs::path& base, const char* suffix) {
+  return base.string() + suffix;
+}
 
-/// The whole series: a 4-D NIfTI, and a VTI for each sample with its time index. base: without suffix.
+/// The whole series: a 4-D NIfTI, and a VTI for each sample with its time index. base: without
+/// suffix.
 void write_series(const fs::path& base, const ContrastWaveform& contrast,
                   const LocatedContrast& located, const ForwardModel& forward) {
   Volume series = source_volume(forward, located.estimate.amplitude, located.inverse,
@@ -126,7 +128,8 @@ void ResultsFolder::write_noise(const std::string& participant,
   const Eigen::MatrixXd basis =
       reference_free_basis(static_cast<Eigen::Index>(contrast.channels.size()));
   const Eigen::MatrixXd covariance = basis * contrast.noise_V2 * basis.transpose();
-  OutputTable table{"Noise covariance of the contrast, average reference.", {{"name", "Channel", ""}}, {}};
+  OutputTable table{
+      "Noise covariance of the contrast, average reference.", {{"name", "Channel", ""}}, {}};
   for (const auto& channel : contrast.channels)
     table.columns.push_back({channel, "Covariance with this channel", "uV^2"});
   for (Eigen::Index m = 0; m < covariance.rows(); ++m) {
@@ -156,8 +159,8 @@ std::vector<SummaryRow> ResultsFolder::write_located(
     for (const auto& window : located.windows) {
       const Volume map = source_volume(
           forward, window.map, located.inverse,
-          fmt::format("{}, {}, {:g}-{:g} ms", contrast.name, method, window.window.from_s / kMillisecond,
-                      window.window.to_s / kMillisecond));
+          fmt::format("{}, {}, {:g}-{:g} ms", contrast.name, method,
+                      window.window.from_s / kMillisecond, window.window.to_s / kMillisecond));
       const fs::path base = path(window.window.name, "sources");
       write_vti(with_suffix(base, ".vti"), map);
       write_nifti(with_suffix(base, ".nii.gz"), map);
@@ -175,14 +178,16 @@ std::vector<SummaryRow> ResultsFolder::write_located(
     Labels times;
     for (const double t : contrast.times_s) times.push_back(format_number(t, 17));
     write_file(path("", "sourceCourses.tsv"),
-               number_table_text(columns, times,
-                                 located.estimate.components.transpose() / located.inverse.unit_in_SI,
-                                 17));
+               number_table_text(
+                   columns, times,
+                   located.estimate.components.transpose() / located.inverse.unit_in_SI, 17));
     Json note = Json::object();
-    note.set("Description", "Source courses: for each point of points.tsv its components to the right (_x), "
-                            "forwards (_y) and upwards (_z).");
+    note.set("Description",
+             "Source courses: for each point of points.tsv its components to the right (_x), "
+             "forwards (_y) and upwards (_z).");
     note.set("Quantity", located.inverse.quantity);
-    note.set("Units", located.inverse.unit.empty() ? "multiples of the noise" : located.inverse.unit);
+    note.set("Units",
+             located.inverse.unit.empty() ? "multiples of the noise" : located.inverse.unit);
     write_json(path("", "sourceCourses.json"), note);
   }
   return summarise(participant, contrast, located, dipoles);
@@ -198,7 +203,8 @@ void ResultsFolder::write_provenance(const Experiment& experiment,
   Json files = Json::array();
   const auto add = [&](const fs::path& path) {
     Json entry = Json::object();
-    entry.set("File", path.lexically_relative(folder).generic_string()).set("Fnv1a64", content_hash(path));
+    entry.set("File", path.lexically_relative(folder).generic_string())
+        .set("Fnv1a64", content_hash(path));
     files.push(entry);
   };
   add(fs::absolute(experiment.file));

@@ -1,23 +1,29 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "app/results_tables.hpp"
 
-#include <algorithm>
-#include <cmath>
-#include <numeric>
+#include <headwater/base/units.hpp>
+#include <headwater/base/version.hpp>
 
 #include <fmt/core.h>
 
-#include <headwater/base/units.hpp>
-#include <headwater/base/version.hpp>
+#include <algorithm>
+#include <cmath>
+#include <numeric>
 
 namespace headwater {
 namespace {
 
 using Row = std::vector<std::string>;
 
-std::string mm(double metres) { return format_fixed(metres / kMillimetre, 1); }
-std::string ms(double seconds) { return format_fixed(seconds / kMillisecond, 1); }
-std::string percent(double share) { return format_fixed(100 * share, 1); }
+std::string mm(double metres) {
+  return format_fixed(metres / kMillimetre, 1);
+}
+std::string ms(double seconds) {
+  return format_fixed(seconds / kMillisecond, 1);
+}
+std::string percent(double share) {
+  return format_fixed(100 * share, 1);
+}
 
 void append(Row& row, std::initializer_list<std::string> cells) {
   row.insert(row.end(), cells.begin(), cells.end());
@@ -45,14 +51,16 @@ const std::vector<ColumnInfo> kPlaceColumns = {
     {"gyrus", "Gyrus of the nearest landmark (or the atlas label)", ""},
     {"lobe", "Lobe", ""},
     {"brodmann", "Customary Brodmann areas of the gyrus (textbook knowledge, not measured)", ""},
-    {"nearby", "Gyri with a landmark within 15 mm, nearest first: the labels are that uncertain", ""},
+    {"nearby", "Gyri with a landmark within 15 mm, nearest first: the labels are that uncertain",
+     ""},
     {"depth_mm", "Depth below the hull of the template brain, on the ray from the centre", "mm"}};
 
 void append_place(Row& row, const ForwardModel& forward, Eigen::Index point) {
   const auto at = forward.grid.mni_m.col(point);
   const Place place = place_of(forward, point);
-  append(row, {mm(at.x()), mm(at.y()), mm(at.z()), place.side, place.gyrus, place.lobe, place.brodmann,
-               join_labels(nearby_gyri(at, 15 * kMillimetre)), mm(forward.grid.depth_m[point])});
+  append(row,
+         {mm(at.x()), mm(at.y()), mm(at.z()), place.side, place.gyrus, place.lobe, place.brodmann,
+          join_labels(nearby_gyri(at, 15 * kMillimetre)), mm(forward.grid.depth_m[point])});
   if (row[row.size() - 2].empty()) row[row.size() - 2] = "n/a";
 }
 
@@ -64,9 +72,10 @@ std::vector<ColumnInfo> joined(std::vector<ColumnInfo> a, const std::vector<Colu
 }
 
 std::string pair_note(const DipoleVerdict& verdict) {
-  return fmt::format("one mirrored pair leaves {} % of the window's mean map unexplained, the best single "
-                     "point {} %",
-                     percent(verdict.pair.unexplained), percent(verdict.one.unexplained));
+  return fmt::format(
+      "one mirrored pair leaves {} % of the window's mean map unexplained, the best single "
+      "point {} %",
+      percent(verdict.pair.unexplained), percent(verdict.one.unexplained));
 }
 
 const char* const kMergedNote =
@@ -82,8 +91,8 @@ void append_dipole(OutputTable& table, const ForwardModel& forward, const Row& h
     append_place(row, forward, point);
     const Eigen::Vector3d nAm = moment / kNanoampereMetre;
     append(row, {format_number(nAm.norm(), 5), format_number(nAm.x(), 5), format_number(nAm.y(), 5),
-                 format_number(nAm.z(), 5), percent(fit.unexplained), format_fixed(fit.criterion, 1),
-                 preferred ? "yes" : "no"});
+                 format_number(nAm.z(), 5), percent(fit.unexplained),
+                 format_fixed(fit.criterion, 1), preferred ? "yes" : "no"});
     table.rows.push_back(row);
   };
   const bool pair = verdict.pair_preferred;
@@ -92,9 +101,9 @@ void append_dipole(OutputTable& table, const ForwardModel& forward, const Row& h
   add("mirrored pair", verdict.pair, verdict.pair.point, verdict.pair.moment_Am, pair);
 }
 
-/// Regions of a window: those near the surface first, by falling rms, then the deep ones. A deep region -
-/// its median point more than 25 mm below the hull (common practice; no source) - collects leakage from
-/// every cortex around it, so that it cannot be ranked with the others.
+/// Regions of a window: those near the surface first, by falling rms, then the deep ones. A deep
+/// region - its median point more than 25 mm below the hull (common practice; no source) - collects
+/// leakage from every cortex around it, so that it cannot be ranked with the others.
 struct RankedRegion {
   std::size_t region;
   double rms;
@@ -109,16 +118,17 @@ bool is_deep(const ForwardModel& forward, const Region& region) {
   return *middle > 25 * kMillimetre;
 }
 
-std::vector<RankedRegion> ranked_regions(const ForwardModel& forward, const LocatedContrast& located,
+std::vector<RankedRegion> ranked_regions(const ForwardModel& forward,
+                                         const LocatedContrast& located,
                                          const SampleRange& samples) {
   std::vector<RankedRegion> ranked;
   for (Eigen::Index r = 0; r < located.courses.rms.rows(); ++r) {
     const auto region = static_cast<std::size_t>(r);
-    ranked.push_back({region,
-                      std::sqrt(located.courses.rms.row(r)
-                                    .segment(samples.first, samples.count)
-                                    .squaredNorm() / static_cast<double>(samples.count)),
-                      is_deep(forward, forward.regions[region])});
+    ranked.push_back(
+        {region,
+         std::sqrt(located.courses.rms.row(r).segment(samples.first, samples.count).squaredNorm() /
+                   static_cast<double>(samples.count)),
+         is_deep(forward, forward.regions[region])});
   }
   std::stable_sort(ranked.begin(), ranked.end(), [](const RankedRegion& a, const RankedRegion& b) {
     return a.deep != b.deep ? b.deep : a.rms > b.rms;
@@ -127,7 +137,8 @@ std::vector<RankedRegion> ranked_regions(const ForwardModel& forward, const Loca
 }
 
 /// The three strongest near the surface; a deep region is named where it is larger still.
-std::string strongest_regions(const ForwardModel& forward, const std::vector<RankedRegion>& ranked) {
+std::string strongest_regions(const ForwardModel& forward,
+                              const std::vector<RankedRegion>& ranked) {
   std::string text;
   const RankedRegion* deep = nullptr;
   for (std::size_t k = 0; k < ranked.size(); ++k) {
@@ -136,8 +147,8 @@ std::string strongest_regions(const ForwardModel& forward, const std::vector<Ran
     if (ranked[k].deep && !deep) deep = &ranked[k];
   }
   if (deep && (ranked[0].deep || deep->rms > ranked[0].rms))
-    text += fmt::format("{}{} (deep)", text.empty() ? "" : "; larger: ",
-                        forward.regions[deep->region].name);
+    text += fmt::format("{}{} (deep)",
+                        text.empty() ? "" : "; larger: ", forward.regions[deep->region].name);
   return text;
 }
 
@@ -155,10 +166,11 @@ std::string peak_note(const ForwardModel& forward, const DipoleVerdict& verdict,
 }  // namespace
 
 OutputTable grid_table(const ForwardModel& forward) {
-  OutputTable table{"Source points of the analysis. " + forward.labels.source,
-                    joined({{"point", "Number of the point, from 1", ""}}, kPlaceColumns,
-                           {{"mirror", "Number of the point that is its mirror image, n/a: none", ""}}),
-                    {}};
+  OutputTable table{
+      "Source points of the analysis. " + forward.labels.source,
+      joined({{"point", "Number of the point, from 1", ""}}, kPlaceColumns,
+             {{"mirror", "Number of the point that is its mirror image, n/a: none", ""}}),
+      {}};
   for (Eigen::Index p = 0; p < forward.grid.size(); ++p) {
     Row row{std::to_string(p + 1)};
     append_place(row, forward, p);
@@ -189,7 +201,8 @@ OutputTable positions_table(const std::string& what, const Labels& names,
 OutputTable dipole_table(const ForwardModel& forward, const ContrastWaveform& contrast,
                          const std::vector<WindowDipoles>& dipoles) {
   OutputTable table{
-      "Second opinion: the one point, or the one mirrored pair of points, whose dipoles explain a scalp map "
+      "Second opinion: the one point, or the one mirrored pair of points, whose dipoles explain a "
+      "scalp map "
       "best; of each window's mean map and of each of its samples.",
       joined({{"window", "Latency window", ""},
               {"latency_ms", "Sample, or 'mean' for the window's mean map", "ms"},
@@ -201,7 +214,8 @@ OutputTable dipole_table(const ForwardModel& forward, const ContrastWaveform& co
               {"moment_z_nAm", "Moment upwards", "nA m"},
               {"unexplained_percent", "Residual variance of the scalp map", "%"},
               {"criterion", "Bayesian information criterion, lower is better", ""},
-              {"preferred", "yes for the model that the criterion prefers (a pair must win by 2)", ""}}),
+              {"preferred", "yes for the model that the criterion prefers (a pair must win by 2)",
+               ""}}),
       {}};
   for (const auto& window : dipoles) {
     append_dipole(table, forward, {window.window.name, "mean"}, window.mean);
@@ -221,8 +235,10 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
       "Where the map of each window is largest. Template head, spherical model: centimetres, not "
       "millimetres.",
       joined({{"window", "Latency window", ""},
-              {"kind", "mirrored pair (of dipoles, where it explains the window's mean map better than any "
-                       "one point) or peak (local maximum of the map)", ""},
+              {"kind",
+               "mirrored pair (of dipoles, where it explains the window's mean map better than any "
+               "one point) or peak (local maximum of the map)",
+               ""},
               {"rank", "Order by value", ""}},
              kPlaceColumns,
              {{"value", inverse.quantity + " (peak: rms over the window; pair: dipole moment)", ""},
@@ -261,14 +277,17 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
 OutputTable region_table(const ForwardModel& forward, const LocatedContrast& located) {
   const auto& inverse = located.inverse;
   OutputTable table{
-      "Regions in each window, largest first. rms: root mean square over points and samples (cannot "
+      "Regions in each window, largest first. rms: root mean square over points and samples "
+      "(cannot "
       "cancel). projected: mean over the window of the course along the region's dominant pattern, "
       "positive where it points outwards on balance.",
       {{"window", "Latency window", ""},
        {"rank", "Order by rms, among regions near the surface, then among deep ones", ""},
        {"region", "Region", ""},
-       {"deep", "yes: the median point lies more than 25 mm below the hull, where leakage from all around "
-                "collects", ""},
+       {"deep",
+        "yes: the median point lies more than 25 mm below the hull, where leakage from all around "
+        "collects",
+        ""},
        {"points", "Source points", ""},
        {"rms", inverse.quantity, inverse.unit},
        {"projected", inverse.quantity + ", signed", inverse.unit},
@@ -282,8 +301,9 @@ OutputTable region_table(const ForwardModel& forward, const LocatedContrast& loc
       deep_began = entry.deep;
       const auto r = static_cast<Eigen::Index>(entry.region);
       const auto& region = forward.regions[entry.region];
-      const double projected =
-          located.courses.projected.row(r).segment(window.samples.first, window.samples.count).mean();
+      const double projected = located.courses.projected.row(r)
+                                   .segment(window.samples.first, window.samples.count)
+                                   .mean();
       table.rows.push_back({window.window.name, std::to_string(++rank), region.name,
                             entry.deep ? "yes" : "no", std::to_string(region.points.size()),
                             format_number(entry.rms / inverse.unit_in_SI, 6),
@@ -297,16 +317,17 @@ OutputTable region_table(const ForwardModel& forward, const LocatedContrast& loc
 OutputTable region_course_table(const ForwardModel& forward, const ContrastWaveform& contrast,
                                 const LocatedContrast& located) {
   const auto& inverse = located.inverse;
-  OutputTable table{"Time courses of regions: along the dominant pattern (signed), and root mean square "
-                    "over points.",
-                    {{"time_s", "Latency", "s"}},
-                    {}};
+  OutputTable table{
+      "Time courses of regions: along the dominant pattern (signed), and root mean square "
+      "over points.",
+      {{"time_s", "Latency", "s"}},
+      {}};
   for (const auto& region : forward.regions) {
     table.columns.push_back({file_label(region.name) + "_projected",
                              region.name + ": " + inverse.quantity + " along the dominant pattern",
                              inverse.unit});
-    table.columns.push_back(
-        {file_label(region.name) + "_rms", region.name + ": " + inverse.quantity + ", rms", inverse.unit});
+    table.columns.push_back({file_label(region.name) + "_rms",
+                             region.name + ": " + inverse.quantity + ", rms", inverse.unit});
   }
   for (Eigen::Index t = 0; t < contrast.times_s.size(); ++t) {
     Row row{format_number(contrast.times_s[t], 9)};
@@ -321,8 +342,10 @@ OutputTable region_course_table(const ForwardModel& forward, const ContrastWavef
 
 OutputTable index_table(const LocatedContrast& located) {
   OutputTable table{
-      "Indices of power: laterality (right - left) / (right + left), temporal-parietal (temporal - parietal) "
-      "/ (temporal + parietal). The interval covers the contrast's noise only, not the head model nor the "
+      "Indices of power: laterality (right - left) / (right + left), temporal-parietal (temporal - "
+      "parietal) "
+      "/ (temporal + parietal). The interval covers the contrast's noise only, not the head model "
+      "nor the "
       "method's own preference for a place.",
       {{"window", "Latency window", ""},
        {"index", "Which index", ""},
@@ -397,14 +420,14 @@ std::vector<SummaryRow> summarise(const ParticipantData& participant,
     const auto add = [&](const std::string& kind, Eigen::Index point, double value,
                          const std::string& unit, double latency_s, const std::string& note) {
       const Place place = place_of(forward, point);
-      rows.push_back({participant.name, contrast.name, located.inverse.method, window.window.name, kind,
-                      forward.grid.mni_m.col(point), kind == "peak" ? place.side : "both", place.gyrus,
-                      place.lobe, value, unit, latency_s, window.fit.explained_variance, window.fit.snr,
-                      strongest, note});
+      rows.push_back({participant.name, contrast.name, located.inverse.method, window.window.name,
+                      kind, forward.grid.mni_m.col(point), kind == "peak" ? place.side : "both",
+                      place.gyrus, place.lobe, value, unit, latency_s,
+                      window.fit.explained_variance, window.fit.snr, strongest, note});
     };
     if (verdict.pair_preferred)
-      add("mirrored pair", verdict.pair.point, verdict.pair.moment_Am.norm() / kNanoampereMetre, "nA m",
-          std::nan(""), pair_note(verdict));
+      add("mirrored pair", verdict.pair.point, verdict.pair.moment_Am.norm() / kNanoampereMetre,
+          "nA m", std::nan(""), pair_note(verdict));
     if (!window.peaks.empty()) {
       const Peak& peak = window.peaks[0];
       add("peak", peak.point, peak.value / located.inverse.unit_in_SI, located.inverse.unit,
@@ -416,7 +439,8 @@ std::vector<SummaryRow> summarise(const ParticipantData& participant,
 
 OutputTable summary_table(const std::vector<SummaryRow>& rows) {
   OutputTable table{
-      "The leading answer of each participant, contrast, method and window: the mirrored pair where one "
+      "The leading answer of each participant, contrast, method and window: the mirrored pair "
+      "where one "
       "explains the window's mean map better than any one point, and the map's largest peak.",
       {{"participant_id", "Participant, or 'mean' of all", ""},
        {"contrast", "Contrast", ""},
@@ -439,11 +463,11 @@ OutputTable summary_table(const std::vector<SummaryRow>& rows) {
       {}};
   for (const auto& row : rows)
     table.rows.push_back({row.participant, row.contrast, row.method, row.window, row.kind,
-                          mm(row.mni_m.x()), mm(row.mni_m.y()), mm(row.mni_m.z()), row.side, row.gyrus,
-                          row.lobe, format_number(row.value, 5), row.unit.empty() ? "n/a" : row.unit,
-                          ms(row.latency_s), percent(row.explained_variance),
-                          format_number(row.snr, 4), row.strongest_regions,
-                          row.note.empty() ? "n/a" : row.note});
+                          mm(row.mni_m.x()), mm(row.mni_m.y()), mm(row.mni_m.z()), row.side,
+                          row.gyrus, row.lobe, format_number(row.value, 5),
+                          row.unit.empty() ? "n/a" : row.unit, ms(row.latency_s),
+                          percent(row.explained_variance), format_number(row.snr, 4),
+                          row.strongest_regions, row.note.empty() ? "n/a" : row.note});
   return table;
 }
 

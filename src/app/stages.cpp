@@ -1,16 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/app/stages.hpp>
+#include <headwater/base/error.hpp>
+#include <headwater/base/parallel.hpp>
+#include <headwater/base/units.hpp>
+
+#include <fmt/core.h>
 
 #include <algorithm>
 #include <cmath>
 #include <new>
 #include <optional>
-
-#include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/parallel.hpp>
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 namespace {
@@ -27,16 +26,18 @@ std::optional<Failure> guarded(const std::string& participant, const Body& body)
   } catch (const Error& error) {
     return Failure{participant, error.what(), error.trouble()};
   } catch (const std::bad_alloc&) {
-    return Failure{participant, "out of memory: use fewer --jobs or a coarser grid.", Trouble::resource};
+    return Failure{participant, "out of memory: use fewer --jobs or a coarser grid.",
+                   Trouble::resource};
   }
   return {};
 }
 
-void check_names(const Labels& asked, const Labels& known, const std::string& what, std::string& problems) {
+void check_names(const Labels& asked, const Labels& known, const std::string& what,
+                 std::string& problems) {
   for (const auto& name : asked)
     if (!find_label(known, name))
-      problems += fmt::format("There is no {} '{}'; there are {}.{}\n", what, name, join_labels(known),
-                              did_you_mean(name, known));
+      problems += fmt::format("There is no {} '{}'; there are {}.{}\n", what, name,
+                              join_labels(known), did_you_mean(name, known));
 }
 
 /// One participant through every contrast and method.

@@ -1,10 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/units.hpp>
 #include <headwater/inverse/dipole_scan.hpp>
 
 #include <Eigen/QR>
-#include <cmath>
 
-#include <headwater/base/units.hpp>
+#include <cmath>
 
 namespace headwater {
 namespace {
@@ -12,8 +12,8 @@ namespace {
 constexpr double kNearestHalf = 20 * kMillimetre;  // from the midline
 constexpr double kEvidence = 2;
 
-/// Orthonormalises the columns of q in place: modified Gram-Schmidt, twice (Giraud et al. 2005 Numer
-/// Math 101:87: two passes reach rounding for the well-conditioned blocks met here).
+/// Orthonormalises the columns of q in place: modified Gram-Schmidt, twice (Giraud et al. 2005
+/// Numer Math 101:87: two passes reach rounding for the well-conditioned blocks met here).
 template <typename Columns>
 void orthonormalise(Columns q) {
   for (int pass = 0; pass < 2; ++pass)

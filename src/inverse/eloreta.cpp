@@ -1,12 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/units.hpp>
 #include <headwater/inverse/eloreta.hpp>
 
 #include <Eigen/Cholesky>
 #include <Eigen/Eigenvalues>
+
 #include <algorithm>
 #include <cmath>
-
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 namespace {
@@ -16,7 +16,8 @@ std::pair<Eigen::Matrix3d, Eigen::Matrix3d> roots(const Eigen::Matrix3d& block) 
   const Eigen::SelfAdjointEigenSolver<Eigen::Matrix3d> solver(block);
   const Eigen::Vector3d root = solver.eigenvalues().cwiseMax(0).cwiseSqrt();
   const Eigen::Matrix3d& v = solver.eigenvectors();
-  return {v * root.asDiagonal() * v.transpose(), v * root.cwiseInverse().asDiagonal() * v.transpose()};
+  return {v * root.asDiagonal() * v.transpose(),
+          v * root.cwiseInverse().asDiagonal() * v.transpose()};
 }
 
 constexpr double kAdaptTolerance = 1e-2;

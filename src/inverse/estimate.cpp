@@ -21,7 +21,12 @@ SourceEstimate estimate_sources(const SourceOperator& inverse, const Eigen::Matr
 }
 
 Eigen::VectorXd window_map(const Eigen::MatrixXd& amplitude, const SampleRange& samples) {
-  return amplitude.middleCols(samples.first, samples.count).array().square().rowwise().mean().sqrt();
+  return amplitude.middleCols(samples.first, samples.count)
+      .array()
+      .square()
+      .rowwise()
+      .mean()
+      .sqrt();
 }
 
 double resolution_trace(const SourceOperator& inverse, const Eigen::MatrixXd& gain) {

@@ -1,16 +1,16 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Power of a region is a quadratic form of z = map d: P = mean_t z_t' Q z_t, Q = kernel kernel' / K over the
-// region's columns. For data plus a constant noise map e: P = mean z'Qz + 2 mean(z)'Q e + e'Qe. So a draw
-// costs a few products of size M-1, whatever the numbers of points and samples.
+// Power of a region is a quadratic form of z = map d: P = mean_t z_t' Q z_t, Q = kernel kernel' / K
+// over the region's columns. For data plus a constant noise map e: P = mean z'Qz + 2 mean(z)'Q e +
+// e'Qe. So a draw costs a few products of size M-1, whatever the numbers of points and samples.
+#include <headwater/base/random.hpp>
 #include <headwater/inverse/indices.hpp>
 
 #include <Eigen/Cholesky>
+
 #include <algorithm>
 #include <cmath>
 #include <map>
 #include <stdexcept>
-
-#include <headwater/base/random.hpp>
 
 namespace headwater {
 namespace {
@@ -53,16 +53,17 @@ PowerIndex summarise(const Comparison& comparison) {
     const double high = draws[std::min(low + 1, draws.size() - 1)];
     return draws[low] + (place - static_cast<double>(low)) * (high - draws[low]);
   };
-  // Noise adds power to both regions and so draws the index towards the noise's own: by about as much
-  // as the draws are drawn away from the value. The interval reaches that far back.
+  // Noise adds power to both regions and so draws the index towards the noise's own: by about as
+  // much as the draws are drawn away from the value. The interval reaches that far back.
   const double bias = mean - index.value;
   index.low = std::max(index.value + quantile(0.025) - mean - std::max(bias, 0.0), -1.0);
   index.high = std::min(index.value + quantile(0.975) - mean + std::max(-bias, 0.0), 1.0);
   return index;
 }
 
-std::vector<Comparison> comparisons(const std::map<std::pair<std::string, Side>, RegionPower>& power,
-                                    const std::vector<std::string>& lobes) {
+std::vector<Comparison> comparisons(
+    const std::map<std::pair<std::string, Side>, RegionPower>& power,
+    const std::vector<std::string>& lobes) {
   std::vector<Comparison> result;
   const auto find = [&](const std::string& lobe, Side side) -> const RegionPower* {
     const auto at = power.find({lobe, side});
@@ -126,7 +127,8 @@ std::vector<PowerIndex> PowerIndices::at(const Eigen::MatrixXd& data_V,
     entry.quiet = (z.array() * (form.matrix * z).array()).sum() / static_cast<double>(z.cols());
     // The draws are needed as numbers only: slope'e + e'Qe for every draw.
     entry.change = (2 * (form.matrix * mean)).transpose() * noise_maps_;
-    entry.change += (noise_maps_.array() * (form.matrix * noise_maps_).array()).colwise().sum().matrix();
+    entry.change +=
+        (noise_maps_.array() * (form.matrix * noise_maps_).array()).colwise().sum().matrix();
     power[{form.lobe, form.side}] = std::move(entry);
     if (form.side == Side::left) lobes.push_back(form.lobe);
   }

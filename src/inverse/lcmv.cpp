@@ -1,19 +1,18 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// In coordinates whitened by D = F F': X = F^-1 K, so that K'D^-1 K = X'X and W_l = (X_l'X_l)^-1 X_l' F^-1;
-// the noise of the data seen there is N = F^-1 C F^-T.
+// In coordinates whitened by D = F F': X = F^-1 K, so that K'D^-1 K = X'X and W_l = (X_l'X_l)^-1
+// X_l' F^-1; the noise of the data seen there is N = F^-1 C F^-T.
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
 #include <headwater/inverse/lcmv.hpp>
+#include <headwater/inverse/sloreta.hpp>
+#include <headwater/signal/reference.hpp>
 
 #include <Eigen/Cholesky>
 #include <Eigen/Eigenvalues>
-#include <cmath>
-#include <limits>
-
 #include <fmt/core.h>
 
-#include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
-#include <headwater/inverse/sloreta.hpp>
-#include <headwater/signal/reference.hpp>
+#include <cmath>
+#include <limits>
 
 namespace headwater {
 namespace {
@@ -30,8 +29,8 @@ Block unit_gain_filters(const Eigen::MatrixXd& x, Eigen::Index point, Eigen::Ind
   return both * inverse.leftCols<3>();
 }
 
-/// Direction of maximum power of the filters, pointing outwards. power and noise: 3 x 3 covariances of
-/// the filters' output; by_noise: power relative to noise is maximised.
+/// Direction of maximum power of the filters, pointing outwards. power and noise: 3 x 3 covariances
+/// of the filters' output; by_noise: power relative to noise is maximised.
 Eigen::Vector3d strongest_direction(const Eigen::Matrix3d& power, const Eigen::Matrix3d& noise,
                                     bool by_noise, const Eigen::Vector3d& outward) {
   Eigen::Vector3d direction;
@@ -80,9 +79,10 @@ Lcmv::Lcmv(const Subspace& subspace, const Eigen::MatrixXd& data_covariance_V2,
       options.regularisation * data_covariance_V2.trace() / static_cast<double>(dimension);
   const Eigen::LLT<Eigen::MatrixXd> factor(d);
   if (factor.info() != Eigen::Success || factor.rcond() < 1e-14)
-    throw InputError(fmt::format("The LCMV data covariance ({} x {}) is singular: raise "
-                                 "lcmv.regularisation (now {:g}).",
-                                 dimension, dimension, options.regularisation));
+    throw InputError(
+        fmt::format("The LCMV data covariance ({} x {}) is singular: raise "
+                    "lcmv.regularisation (now {:g}).",
+                    dimension, dimension, options.regularisation));
   map_ = subspace.basis.transpose();
   factor.matrixL().solveInPlace(map_);
   Eigen::MatrixXd x = subspace.gain;

@@ -1,10 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/units.hpp>
 #include <headwater/inverse/peaks.hpp>
 
 #include <algorithm>
 #include <cmath>
-
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 

@@ -1,10 +1,11 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// X = A Z with A (3K by r) the region's rows of the operator and Z = map d. With Z Z' = E E' (eigen-
-// decomposition, E r by q, q the rank) the left singular vectors of X are those of A E, so that the
-// eigenproblem is q by q, whatever the numbers of points and samples.
+// X = A Z with A (3K by r) the region's rows of the operator and Z = map d. With Z Z' = E E'
+// (eigen- decomposition, E r by q, q the rank) the left singular vectors of X are those of A E, so
+// that the eigenproblem is q by q, whatever the numbers of points and samples.
 #include <headwater/inverse/region_courses.hpp>
 
 #include <Eigen/Eigenvalues>
+
 #include <cmath>
 
 namespace headwater {
@@ -17,8 +18,7 @@ Eigen::MatrixXd root_of_gram(const Eigen::MatrixXd& z) {
   const double smallest = 1e-14 * values[values.size() - 1];
   Eigen::Index rank = 0;
   while (rank < values.size() && values[values.size() - 1 - rank] > smallest) ++rank;
-  return solver.eigenvectors().rightCols(rank) *
-         values.tail(rank).cwiseSqrt().asDiagonal();
+  return solver.eigenvectors().rightCols(rank) * values.tail(rank).cwiseSqrt().asDiagonal();
 }
 
 struct Pattern {
@@ -37,7 +37,8 @@ Pattern dominant_pattern(const Eigen::MatrixXd& block, const Eigen::Matrix3Xd& o
   pattern.share = solver.eigenvalues()[last] / total;
   Eigen::VectorXd u = block * solver.eigenvectors().col(last);
   double outwards = 0;
-  for (Eigen::Index k = 0; k < outward.cols(); ++k) outwards += u.segment<3>(3 * k).dot(outward.col(k));
+  for (Eigen::Index k = 0; k < outward.cols(); ++k)
+    outwards += u.segment<3>(3 * k).dot(outward.col(k));
   if (outwards < 0) u = -u;
   for (Eigen::Index k = 0; k < outward.cols(); ++k) {
     const double length = u.segment<3>(3 * k).norm();
@@ -54,8 +55,8 @@ RegionCourses region_courses(const SourceOperator& inverse, const SourceEstimate
                              const Eigen::Matrix3Xd& outward) {
   const auto count = static_cast<Eigen::Index>(regions.size());
   const Eigen::Index samples = data_V.cols();
-  RegionCourses courses{Eigen::MatrixXd::Zero(count, samples), Eigen::MatrixXd::Zero(count, samples),
-                        Eigen::VectorXd::Zero(count)};
+  RegionCourses courses{Eigen::MatrixXd::Zero(count, samples),
+                        Eigen::MatrixXd::Zero(count, samples), Eigen::VectorXd::Zero(count)};
   const Eigen::MatrixXd root = root_of_gram(inverse.map * data_V);
   for (Eigen::Index r = 0; r < count; ++r) {
     const auto& points = regions[static_cast<std::size_t>(r)].points;
@@ -75,7 +76,8 @@ RegionCourses region_courses(const SourceOperator& inverse, const SourceEstimate
     courses.projected.row(r) = weights * (inverse.map * data_V);
     for (Eigen::Index t = 0; t < samples; ++t) {
       double power = 0;
-      for (const Eigen::Index p : points) power += estimate.amplitude(p, t) * estimate.amplitude(p, t);
+      for (const Eigen::Index p : points)
+        power += estimate.amplitude(p, t) * estimate.amplitude(p, t);
       courses.rms(r, t) = std::sqrt(power / static_cast<double>(size));
     }
   }

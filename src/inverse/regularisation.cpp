@@ -1,14 +1,13 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/error.hpp>
 #include <headwater/inverse/regularisation.hpp>
+
+#include <fmt/core.h>
 
 #include <algorithm>
 #include <cmath>
 #include <functional>
 #include <limits>
-
-#include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
 
 namespace headwater {
 namespace {
@@ -62,8 +61,8 @@ Minimum minimise(const std::function<double(double)>& f, const Range& range) {
 }
 
 /// Curvature of the L-curve (x = log rho, y = log eta) at lambda, positive at a corner, with
-/// rho = sum f^2 z2 (residual), eta = sum d/(d+lambda)^2 z2 (solution), f = lambda/(d+lambda). Derivatives
-/// by u = log lambda in closed form: df/du = f (1-f).
+/// rho = sum f^2 z2 (residual), eta = sum d/(d+lambda)^2 z2 (solution), f = lambda/(d+lambda).
+/// Derivatives by u = log lambda in closed form: df/du = f (1-f).
 double curvature(const Eigen::VectorXd& d, const Eigen::VectorXd& z2, double lambda) {
   const Eigen::ArrayXd sum = d.array() + lambda;
   const Eigen::ArrayXd f = lambda / sum, g = d.array() / sum;  // f + g = 1
@@ -80,8 +79,9 @@ double curvature(const Eigen::VectorXd& d, const Eigen::VectorXd& z2, double lam
   return speed > 0 ? (x1 * y2 - x2 * y1) / speed : 0;
 }
 
-/// Largest lambda whose mean squared residual is at most 1 (the noise), by bisection of its logarithm: the
-/// residual grows with lambda. NaN where the data stay below the noise, or above it everywhere.
+/// Largest lambda whose mean squared residual is at most 1 (the noise), by bisection of its
+/// logarithm: the residual grows with lambda. NaN where the data stay below the noise, or above it
+/// everywhere.
 double discrepancy(const Eigen::VectorXd& d, const Eigen::VectorXd& z2, double samples,
                    const Range& range) {
   const auto residual = [&](double lambda) {
@@ -101,7 +101,8 @@ double discrepancy(const Eigen::VectorXd& d, const Eigen::VectorXd& z2, double s
 }  // namespace
 
 RegularisationChoice choose_regularisation(const Eigen::VectorXd& eigenvalues,
-                                           const Eigen::MatrixXd& z, const RegularisationRule& rule) {
+                                           const Eigen::MatrixXd& z,
+                                           const RegularisationRule& rule) {
   if (z.cols() == 0) throw InputError("No sample to choose the regularisation from.");
   const Eigen::VectorXd d = eigenvalues.cwiseMax(0);
   const Eigen::VectorXd z2 = z.rowwise().squaredNorm();

@@ -2,6 +2,7 @@
 #include <headwater/inverse/ridge.hpp>
 
 #include <Eigen/Eigenvalues>
+
 #include <cmath>
 
 namespace headwater {
@@ -17,8 +18,8 @@ Eigen::MatrixXd spectrum_map(const Subspace& subspace, const GramSpectrum& spect
   return spectrum.vectors.transpose() * subspace.whitener * subspace.basis.transpose();
 }
 
-FitQuality ridge_fit(const Subspace& subspace, const GramSpectrum& spectrum, const Eigen::MatrixXd& z,
-                     double alpha, double scale) {
+FitQuality ridge_fit(const Subspace& subspace, const GramSpectrum& spectrum,
+                     const Eigen::MatrixXd& z, double alpha, double scale) {
   const Eigen::ArrayXd shrink = alpha / (spectrum.values.array() + alpha);
   const Eigen::MatrixXd residual = shrink.matrix().asDiagonal() * z;
   // Back to volts: y = F U z with F = W^-1.

@@ -1,9 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/units.hpp>
 #include <headwater/inverse/sloreta.hpp>
 
 #include <Eigen/Eigenvalues>
-
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 

@@ -1,11 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/error.hpp>
 #include <headwater/inverse/subspace.hpp>
+#include <headwater/signal/reference.hpp>
 
 #include <Eigen/Cholesky>
 #include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/signal/reference.hpp>
 
 namespace headwater {
 
@@ -14,10 +13,11 @@ Subspace make_subspace(const Labels& channels, const Eigen::MatrixXd& gain,
   const auto count = static_cast<Eigen::Index>(channels.size());
   if (gain.rows() != count || gain.cols() % 3 != 0 || noise_V2.rows() != count - 1 ||
       noise_V2.cols() != count - 1)
-    throw InputError(fmt::format("Sizes disagree: {} channels, lead field {} x {}, noise covariance "
-                                 "{} x {} (expected {} rows, a multiple of 3 columns; {} x {}).",
-                                 count, gain.rows(), gain.cols(), noise_V2.rows(), noise_V2.cols(),
-                                 count, count - 1, count - 1));
+    throw InputError(
+        fmt::format("Sizes disagree: {} channels, lead field {} x {}, noise covariance "
+                    "{} x {} (expected {} rows, a multiple of 3 columns; {} x {}).",
+                    count, gain.rows(), gain.cols(), noise_V2.rows(), noise_V2.cols(), count,
+                    count - 1, count - 1));
   Subspace subspace;
   subspace.channels = channels;
   subspace.basis = reference_free_basis(count);
@@ -25,10 +25,12 @@ Subspace make_subspace(const Labels& channels, const Eigen::MatrixXd& gain,
   subspace.noise_V2 = noise_V2;
   if (!gain.allFinite()) throw InputError("The lead field holds a value that is not a number.");
   const Eigen::LLT<Eigen::MatrixXd> factor(noise_V2);
-  // A matrix of lower rank may be factorised all the same, by rounding; NaN passes every comparison.
+  // A matrix of lower rank may be factorised all the same, by rounding; NaN passes every
+  // comparison.
   if (!noise_V2.allFinite() || factor.info() != Eigen::Success || factor.rcond() < 1e-14)
-    throw InputError("The noise covariance is not positive definite: shrink it (noise.shrinkage above "
-                     "0), or give more samples.");
+    throw InputError(
+        "The noise covariance is not positive definite: shrink it (noise.shrinkage above "
+        "0), or give more samples.");
   subspace.whitener = Eigen::MatrixXd::Identity(count - 1, count - 1);
   factor.matrixL().solveInPlace(subspace.whitener);
   subspace.whitened_gain = subspace.gain;

@@ -10,33 +10,33 @@
 //   p_(k+1) = c_k x p_k - p_(k-1),  c_k = (2k+1)/(k+1) s_(k+1)/s_k.
 // What depends on the degree alone is tabulated once; electrodes are processed in packets. Below
 // b = 0.2 the closed form loses digits and the series is short: f_inf is taken as 0 there.
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
 #include <headwater/model/lead_field.hpp>
+#include <headwater/model/sphere_series.hpp>
+
+#include <fmt/core.h>
 
 #include <algorithm>
 #include <cmath>
 #include <cstring>
 #include <vector>
 
-#include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
-#include <headwater/model/sphere_series.hpp>
-
 namespace headwater {
 namespace {
 
-// Electrodes go through the recurrence eight at a time, in two vector registers of four (GCC and Clang
-// vector types: portable, and lowered to what the machine has).
+// Electrodes go through the recurrence eight at a time, in two vector registers of four (GCC and
+// Clang vector types: portable, and lowered to what the machine has).
 using Lanes [[gnu::vector_size(32)]] = double;
 constexpr int kLanes = 4, kRegisters = 2, kPacket = kLanes * kRegisters;
 
-constexpr double kClosedFormFrom = 0.2;     // eccentricity b
-constexpr double kTailTolerance = 1e-10;    // of the radial dipole's surface maximum
+constexpr double kClosedFormFrom = 0.2;        // eccentricity b
+constexpr double kTailTolerance = 1e-10;       // of the radial dipole's surface maximum
 constexpr double kShortTailTolerance = 1e-15;  // below kClosedFormFrom
 constexpr Eigen::Index kMostTerms = 200000;
 
-/// What depends on the degree n alone, at index n: the shells' factors and the recurrence's constants.
+/// What depends on the degree n alone, at index n: the shells' factors and the recurrence's
+/// constants.
 struct Degrees {
   double limit = 1, smallest_factor = 1, largest_factor = 1;
   bool homogeneous = false;
@@ -53,8 +53,8 @@ struct Degrees {
 /// Terms that reach the tolerance at eccentricity b whatever the factors are.
 Eigen::Index most_terms(double b) {
   Eigen::Index n = 20;
-  while (n < kMostTerms && (2.0 * static_cast<double>(n) + 1) *
-                                   std::pow(b, static_cast<double>(n)) / (1 - b) > 1e-16)
+  while (n < kMostTerms &&
+         (2.0 * static_cast<double>(n) + 1) * std::pow(b, static_cast<double>(n)) / (1 - b) > 1e-16)
     n += 1 + n / 8;
   return n;
 }
@@ -66,9 +66,11 @@ Degrees tabulate_degrees(const HeadModel& head, double largest_b) {
   table.homogeneous = (sigma.array() == sigma[0]).all();
   const Eigen::Index terms = most_terms(table.homogeneous ? kClosedFormFrom : largest_b);
   if (terms >= kMostTerms)
-    throw InputError(fmt::format("A point lies at {:.9f} of the head's radius: the series of the shells "
-                                 "does not converge there. Move the point inwards or thicken the outer "
-                                 "shells.", largest_b));
+    throw InputError(
+        fmt::format("A point lies at {:.9f} of the head's radius: the series of the shells "
+                    "does not converge there. Move the point inwards or thicken the outer "
+                    "shells.",
+                    largest_b));
   const Eigen::VectorXd f = shell_factors(head, terms);
   table.smallest_factor = std::min(f.minCoeff(), table.limit);
   table.largest_factor = f.maxCoeff();
@@ -146,8 +148,8 @@ void expand_point(const Degrees& table, double b, PointSeries& series) {
 }
 
 /// Sums both series at the cosines x (a multiple of kPacket of them) into a and t.
-void sum_series(const PointSeries& series, const std::vector<double>& step,
-                const Eigen::ArrayXd& x, Eigen::ArrayXd& a, Eigen::ArrayXd& t) {
+void sum_series(const PointSeries& series, const std::vector<double>& step, const Eigen::ArrayXd& x,
+                Eigen::ArrayXd& a, Eigen::ArrayXd& t) {
   const std::vector<Term>& terms = series.terms;
   for (Eigen::Index row = 0; row < x.size(); row += kPacket) {
     Lanes cosine[kRegisters], even[kRegisters], odd[kRegisters], radial[kRegisters],
@@ -191,15 +193,19 @@ void check_points(const HeadModel& head, const Eigen::Ref<const Eigen::Matrix3Xd
                   const Eigen::Ref<const Eigen::Matrix3Xd>& points_m) {
   for (Eigen::Index m = 0; m < electrodes.cols(); ++m)
     if (!electrodes.col(m).allFinite() || electrodes.col(m).squaredNorm() == 0)
-      throw InputError(fmt::format("Electrode {} has no direction: its position is the origin or not a "
-                                   "number.", m + 1));
+      throw InputError(
+          fmt::format("Electrode {} has no direction: its position is the origin or not a "
+                      "number.",
+                      m + 1));
   const double brain = head.radii_m[0];
   for (Eigen::Index p = 0; p < points_m.cols(); ++p) {
     const double r = points_m.col(p).norm();
     if (!(r < brain))
-      throw InputError(fmt::format("Point {} lies {:g} mm from the centre, outside the innermost shell "
-                                   "({:g} mm): sources belong inside it. Are the points in the head frame "
-                                   "and in mm?", p + 1, r / kMillimetre, brain / kMillimetre));
+      throw InputError(
+          fmt::format("Point {} lies {:g} mm from the centre, outside the innermost shell "
+                      "({:g} mm): sources belong inside it. Are the points in the head frame "
+                      "and in mm?",
+                      p + 1, r / kMillimetre, brain / kMillimetre));
   }
 }
 

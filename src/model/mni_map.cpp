@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <headwater/model/mni_map.hpp>
-
 #include <headwater/model/head.hpp>
+#include <headwater/model/mni_map.hpp>
 #include <headwater/model/template_brain.hpp>
 
 namespace headwater {

@@ -1,22 +1,21 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/embedded_file.hpp>
+#include <headwater/base/error.hpp>
+#include <headwater/base/nifti.hpp>
+#include <headwater/base/table.hpp>
+#include <headwater/base/units.hpp>
 #include <headwater/model/regions.hpp>
 
 #include <Eigen/Geometry>
 #include <Eigen/LU>
+#include <fmt/core.h>
+
 #include <algorithm>
 #include <array>
 #include <cmath>
 #include <limits>
 #include <map>
 #include <set>
-
-#include <fmt/core.h>
-
-#include <headwater/base/embedded_file.hpp>
-#include <headwater/base/error.hpp>
-#include <headwater/base/nifti.hpp>
-#include <headwater/base/table.hpp>
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 namespace {
@@ -79,8 +78,8 @@ std::map<int, Gyrus> read_atlas_table(const std::filesystem::path& path) {
   std::map<int, Gyrus> gyri;
   for (std::size_t row = 0; row < table.rows.size(); ++row) {
     const std::string& full = table.rows[row][name];
-    Gyrus gyrus{cell_or_na(table, row, "abbreviation"), full, fold_case(cell_or_na(table, row, "lobe")),
-                cell_or_na(table, row, "brodmann")};
+    Gyrus gyrus{cell_or_na(table, row, "abbreviation"), full,
+                fold_case(cell_or_na(table, row, "lobe")), cell_or_na(table, row, "brodmann")};
     if (gyrus.abbreviation == "n/a") gyrus.abbreviation = full;
     gyri.emplace(static_cast<int>(table.number(row, index)), gyrus);
   }
@@ -110,7 +109,8 @@ template <typename Belongs>
 std::vector<Eigen::Index> points_where(const PointLabels& labels, const Belongs& belongs) {
   std::vector<Eigen::Index> points;
   for (std::size_t p = 0; p < labels.gyrus.size(); ++p)
-    if (labels.gyrus[p] >= 0 && belongs(labels.gyri[static_cast<std::size_t>(labels.gyrus[p])], labels.side[p]))
+    if (labels.gyrus[p] >= 0 &&
+        belongs(labels.gyri[static_cast<std::size_t>(labels.gyrus[p])], labels.side[p]))
       points.push_back(static_cast<Eigen::Index>(p));
   return points;
 }
@@ -121,7 +121,9 @@ std::string side_name(Side side) {
   return side == Side::left ? "left" : side == Side::right ? "right" : "midline";
 }
 
-Side side_of(double x_m) { return x_m < 0 ? Side::left : x_m > 0 ? Side::right : Side::midline; }
+Side side_of(double x_m) {
+  return x_m < 0 ? Side::left : x_m > 0 ? Side::right : Side::midline;
+}
 
 Gyrus template_gyrus(const Eigen::Vector3d& mni_m) {
   return landmarks().gyri[static_cast<std::size_t>(nearest_gyrus(mni_m))];
@@ -150,8 +152,9 @@ PointLabels template_labels(const SourceGrid& grid) {
   labels.side = sides_of(grid);
   for (Eigen::Index p = 0; p < grid.size(); ++p)
     labels.gyrus.push_back(nearest_gyrus(grid.mni_m.col(p)));
-  labels.source = "Gyri by the nearest landmark of the template (agreement with measured label volumes: "
-                  "gyrus 0.76, lobe 0.94); Brodmann areas are customary.";
+  labels.source =
+      "Gyri by the nearest landmark of the template (agreement with measured label volumes: "
+      "gyrus 0.76, lobe 0.94); Brodmann areas are customary.";
   return labels;
 }
 
@@ -184,9 +187,11 @@ PointLabels atlas_labels(const SourceGrid& grid, const std::filesystem::path& vo
                                  table_path.string(), join_labels(text), volume_path.string()));
   }
   if (!any)
-    throw InputError(fmt::format("{}: no source point lies inside a label: is the volume in MNI space?",
-                                 volume_path.string()));
-  labels.source = fmt::format("Regions by the nearest voxel of {}.", volume_path.filename().string());
+    throw InputError(
+        fmt::format("{}: no source point lies inside a label: is the volume in MNI space?",
+                    volume_path.string()));
+  labels.source =
+      fmt::format("Regions by the nearest voxel of {}.", volume_path.filename().string());
   return labels;
 }
 
@@ -217,8 +222,8 @@ std::vector<Region> requested_regions(const PointLabels& labels,
         problems += fmt::format("Region '{}': no gyrus '{}'.{}\n", request.name, gyrus,
                                 did_you_mean(gyrus, known));
     if (!request.lobe.empty() && !find_label_any_case(lobes, request.lobe))
-      problems += fmt::format("Region '{}': no lobe '{}'; there are {}.\n", request.name, request.lobe,
-                              join_labels(lobes));
+      problems += fmt::format("Region '{}': no lobe '{}'; there are {}.\n", request.name,
+                              request.lobe, join_labels(lobes));
     if (!request.side.empty() && !find_label(sides, request.side))
       problems += fmt::format("Region '{}': no side '{}'.{}\n", request.name, request.side,
                               did_you_mean(request.side, sides));
@@ -228,9 +233,10 @@ std::vector<Region> requested_regions(const PointLabels& labels,
     if (request.side == "right") region.side = Side::right;
     if (request.gyri.empty()) region.lobe = fold_case(request.lobe);
     region.points = points_where(labels, [&](const Gyrus& gyrus, Side at) {
-      const bool inside = find_label_any_case(request.gyri, gyrus.abbreviation) ||
-                          find_label_any_case(request.gyri, gyrus.name) ||
-                          (!request.lobe.empty() && fold_case(gyrus.lobe) == fold_case(request.lobe));
+      const bool inside =
+          find_label_any_case(request.gyri, gyrus.abbreviation) ||
+          find_label_any_case(request.gyri, gyrus.name) ||
+          (!request.lobe.empty() && fold_case(gyrus.lobe) == fold_case(request.lobe));
       return inside && (request.side.empty() || side_name(at) == request.side);
     });
     if (region.points.empty() && understood)

@@ -1,5 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
+#include <headwater/model/mni_map.hpp>
 #include <headwater/model/source_grid.hpp>
+
+#include <fmt/core.h>
 
 #include <algorithm>
 #include <array>
@@ -8,26 +13,21 @@
 #include <map>
 #include <stdexcept>
 
-#include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
-#include <headwater/model/mni_map.hpp>
-
 namespace headwater {
 namespace {
 
 constexpr double kMirrorTolerance = 1e-3;  // m, for the user's points
 
-double square(double v) { return v * v; }
+double square(double v) {
+  return v * v;
+}
 
 /// The rule of the header; coordinates and depth in mm.
 bool is_cortex(double x, double y, double z, double depth) {
   const double side = std::abs(x);
   if (!(depth > 1) || !(z > -48)) return false;
-  const bool above_tentorium =
-      y > -25 ||
-      z > -27.3 - 0.814 * side - 1.011 * y + 5.33 * square(x / 30) - 30.7 * square(y / 60);
+  const bool above_tentorium = y > -25 || z > -27.3 - 0.814 * side - 1.011 * y +
+                                                  5.33 * square(x / 30) - 30.7 * square(y / 60);
   if (!above_tentorium) return false;
   if (depth <= 18) return true;
   const bool core = square((side - 21) / 25) + square((y + 15) / 68) + square((z + 22) / 77) < 1 ||
@@ -73,15 +73,15 @@ SourceGrid lattice_grid(double spacing_m, double scalp_radius_m) {
   SourceGrid grid;
   grid.spacing_m = spacing_m;
   std::vector<LatticeKey> kept;
-  const int reach = static_cast<int>(std::ceil(130 / h));  // the hull ends within 130 mm of the origin
+  const int reach =
+      static_cast<int>(std::ceil(130 / h));  // the hull ends within 130 mm of the origin
   for (int k = -reach; k <= reach; ++k)
     for (int j = -reach; j <= reach; ++j)
       for (int i = -reach; i <= reach; ++i) {
         const Eigen::Vector3d mm(i * h, j * h, k * h);
         // |x| decides, so that both sides keep the same points to the last bit.
         const Eigen::Vector3d right(std::abs(mm.x()), mm.y(), mm.z());
-        if (is_cortex(mm.x(), mm.y(), mm.z(),
-                      depth_below_hull(right * kMillimetre) / kMillimetre))
+        if (is_cortex(mm.x(), mm.y(), mm.z(), depth_below_hull(right * kMillimetre) / kMillimetre))
           kept.push_back({i, j, k});
       }
   const auto count = static_cast<Eigen::Index>(kept.size());
@@ -117,7 +117,8 @@ SourceGrid point_grid(const Labels& names, const Eigen::Matrix3Xd& points_m, Poi
   for (Eigen::Index p = 0; p < points_m.cols(); ++p) {
     const auto& name = names[static_cast<std::size_t>(p)];
     if (!points_m.col(p).allFinite())
-      throw InputError(fmt::format("Source point '{}' has a coordinate that is not a number.", name));
+      throw InputError(
+          fmt::format("Source point '{}' has a coordinate that is not a number.", name));
     if (space == PointSpace::mni)
       grid.head_m.col(p) = mni_to_head(points_m.col(p), scalp_radius_m);
     else
@@ -127,9 +128,9 @@ SourceGrid point_grid(const Labels& names, const Eigen::Matrix3Xd& points_m, Poi
   for (Eigen::Index p = 0; p < points_m.cols(); ++p) {
     const auto [other, distance] = nearest_point(grid.mni_m, grid.mni_m.col(p), p);
     if (other >= 0 && distance < 1e-6)
-      throw InputError(fmt::format("Source points '{}' and '{}' lie on the same place: leave one out.",
-                                   names[static_cast<std::size_t>(p)],
-                                   names[static_cast<std::size_t>(other)]));
+      throw InputError(
+          fmt::format("Source points '{}' and '{}' lie on the same place: leave one out.",
+                      names[static_cast<std::size_t>(p)], names[static_cast<std::size_t>(other)]));
     if (other >= 0) nearest.push_back(distance);
   }
   if (!nearest.empty()) {
@@ -144,7 +145,8 @@ SourceGrid point_grid(const Labels& names, const Eigen::Matrix3Xd& points_m, Poi
     const auto [other, distance] = nearest_point(grid.mni_m, image, -1);
     if (distance <= kMirrorTolerance) grid.mirror[static_cast<std::size_t>(p)] = other;
   }
-  // Where two points compete for one image the map would not be an involution: neither has a mirror.
+  // Where two points compete for one image the map would not be an involution: neither has a
+  // mirror.
   const auto first = grid.mirror;
   for (std::size_t p = 0; p < first.size(); ++p)
     if (first[p] >= 0 && first[static_cast<std::size_t>(first[p])] != static_cast<Eigen::Index>(p))

@@ -5,16 +5,15 @@
 //   Q[m,m] = (2m-1)!! sin^m,  Q[m+1,m] = (2m+1) cos Q[m,m],
 //   Q[l,m] = ((2l-1) cos Q[l-1,m] - (l+m-1) Q[l-2,m]) / (l-m).
 // N[l,m] = sqrt((2l+1)/(4 pi) (l-m)!/(l+m)!), times sqrt(2) for m > 0.
+#include <headwater/base/embedded_file.hpp>
+#include <headwater/base/table.hpp>
+#include <headwater/base/units.hpp>
+#include <headwater/model/head.hpp>
 #include <headwater/model/template_brain.hpp>
 
 #include <algorithm>
 #include <array>
 #include <cmath>
-
-#include <headwater/base/embedded_file.hpp>
-#include <headwater/base/table.hpp>
-#include <headwater/base/units.hpp>
-#include <headwater/model/head.hpp>
 
 namespace headwater {
 namespace {
@@ -57,8 +56,8 @@ double hull_radius(const Eigen::Vector3d& direction) {
   const Eigen::Vector3d u = direction.normalized();
   const double c = u.z(), s = std::hypot(u.x(), u.y());
   const double cos_phi = s > 0 ? u.y() / s : 1, sin_phi = s > 0 ? u.x() / s : 0;
-  double radius = 0, diagonal = 1;   // diagonal: Q[m,m]
-  double cos_m = 1, sin_m = 0;       // cos(m phi), sin(m phi)
+  double radius = 0, diagonal = 1;  // diagonal: Q[m,m]
+  double cos_m = 1, sin_m = 0;      // cos(m phi), sin(m phi)
   for (int m = 0; m <= kDegree; ++m) {
     double before = 0, q = diagonal;
     for (int l = m; l <= kDegree; ++l) {
@@ -77,8 +76,7 @@ double hull_radius(const Eigen::Vector3d& direction) {
 
 double drawn_brain_radius(const Eigen::Vector3d& direction) {
   const double radius = hull_radius(direction);
-  const Eigen::Vector3d mni_mm =
-      (radius * direction.normalized() + kHeadCentreMni) / kMillimetre;
+  const Eigen::Vector3d mni_mm = (radius * direction.normalized() + kHeadCentreMni) / kMillimetre;
   // The longitudinal groove fades out from z = -5 to z = -35 mm.
   const double fade = std::clamp((mni_mm.z() + 35) / 30, 0.0, 1.0);
   const double longitudinal = fade * groove(mni_mm.x(), 8, 5.1);

@@ -1,10 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "reference/lead_field.hpp"
 
-#include <cmath>
-
 #include <headwater/base/units.hpp>
 #include <headwater/model/sphere_series.hpp>
+
+#include <cmath>
 
 namespace headwater::reference {
 namespace {
@@ -34,7 +34,8 @@ Eigen::MatrixXd compute_gain(const HeadModel& head, const Eigen::Matrix3Xd& elec
   Eigen::MatrixXd gain(electrodes.cols(), 3 * points_m.cols());
   for (Eigen::Index p = 0; p < points_m.cols(); ++p) {
     const double r0 = points_m.col(p).norm(), b = r0 / radius;
-    const Eigen::Vector3d u = r0 > 0 ? Eigen::Vector3d(points_m.col(p) / r0) : Eigen::Vector3d::UnitZ();
+    const Eigen::Vector3d u =
+        r0 > 0 ? Eigen::Vector3d(points_m.col(p) / r0) : Eigen::Vector3d::UnitZ();
     const Eigen::Index terms = terms_needed(b);
     for (Eigen::Index m = 0; m < electrodes.cols(); ++m) {
       const Eigen::Vector3d e = electrodes.col(m).normalized();

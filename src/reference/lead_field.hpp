@@ -1,9 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Plain twin of compute_gain: the series as printed, term by term, without the closed form split off.
+// Plain twin of compute_gain: the series as printed, term by term, without the closed form split
+// off.
 #pragma once
-#include <Eigen/Core>
-
 #include <headwater/model/head.hpp>
+
+#include <Eigen/Core>
 
 namespace headwater::reference {
 

@@ -1,10 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
 #include <headwater/signal/time_window.hpp>
 
 #include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
 
 namespace headwater {
 

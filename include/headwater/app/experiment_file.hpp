@@ -1,13 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The experiment file: what is to be analysed and how. TOML; every key in keys.hpp.
 #pragma once
-#include <cstdint>
-#include <filesystem>
-#include <map>
-#include <optional>
-#include <string>
-#include <vector>
-
 #include <headwater/inverse/lcmv.hpp>
 #include <headwater/inverse/regularisation.hpp>
 #include <headwater/model/head.hpp>
@@ -18,6 +11,13 @@
 #include <headwater/signal/noise_covariance.hpp>
 #include <headwater/signal/time_window.hpp>
 
+#include <cstdint>
+#include <filesystem>
+#include <map>
+#include <optional>
+#include <string>
+#include <vector>
+
 namespace headwater {
 
 struct ContrastPlan {
@@ -27,13 +27,13 @@ struct ContrastPlan {
 
 /// A checked experiment: SI units, paths absolute, every default filled in.
 struct Experiment {
-  std::filesystem::path file;       ///< the experiment file
+  std::filesystem::path file;  ///< the experiment file
   std::string title;
   std::filesystem::path output;
   std::uint64_t seed = 1;
 
   Labels participants;
-  std::string averages_pattern;     ///< absolute, with {participant} and {condition}
+  std::string averages_pattern;  ///< absolute, with {participant} and {condition}
   std::optional<std::filesystem::path> counts_table;
   double trials_each = 0;
   VoltageUnit unit = VoltageUnit::microvolt;
@@ -46,7 +46,7 @@ struct Experiment {
   std::vector<ContrastPlan> contrasts;
   std::vector<TimeWindow> windows;
 
-  HeadModel head;                   ///< radii for the given radius (92 mm until fitted)
+  HeadModel head;  ///< radii for the given radius (92 mm until fitted)
   bool fit_radius = false;
 
   double spacing_m = 7e-3;
@@ -68,8 +68,8 @@ struct Experiment {
 };
 
 /// Reads and checks. Throws ExperimentError that lists every problem, one a line, each with
-/// file:line:column: unknown keys (with a suggestion), wrong types, values out of range, missing keys,
-/// names that do not fit together, participants without files.
+/// file:line:column: unknown keys (with a suggestion), wrong types, values out of range, missing
+/// keys, names that do not fit together, participants without files.
 Experiment read_experiment(const std::filesystem::path& file);
 
 /// The pattern with {participant} and {condition} filled in.

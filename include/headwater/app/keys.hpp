@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Every key of the experiment file, in one table: what `headwater keys` prints and what the reader checks
-// types, ranges and choices against.
+// Every key of the experiment file, in one table: what `headwater keys` prints and what the reader
+// checks types, ranges and choices against.
 #pragma once
 #include <string>
 #include <vector>
@@ -9,24 +9,24 @@ namespace headwater {
 
 enum class KeyType {
   text,
-  path,             // text, relative to the experiment file
+  path,  // text, relative to the experiment file
   number,
   whole_number,
   true_false,
   text_list,
   number_list,
-  text_map,         // { from = "to" }
-  number_map,       // { name = number }
-  effect_map,       // { factor = ["first", "second"] }
+  text_map,    // { from = "to" }
+  number_map,  // { name = number }
+  effect_map,  // { factor = ["first", "second"] }
   number_or_text,
-  rule,             // text, or { snr = number } or { lambda = number }
+  rule,  // text, or { snr = number } or { lambda = number }
 };
 
 struct KeyRecord {
-  std::string name;   ///< "head.radius_mm"; "contrasts[].name" for [[contrasts]]
+  std::string name;  ///< "head.radius_mm"; "contrasts[].name" for [[contrasts]]
   KeyType type;
-  std::string unit;   ///< "" when it has none
-  double least = 0, most = 0;       ///< of numbers (each of a list); equal: any
+  std::string unit;                  ///< "" when it has none
+  double least = 0, most = 0;        ///< of numbers (each of a list); equal: any
   std::vector<std::string> choices;  ///< of text; empty: any
   std::string standard;              ///< default as it would be written; "required", or "" (none)
   std::string meaning;

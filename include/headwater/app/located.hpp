@@ -1,16 +1,17 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The estimates of one contrast of one participant by one method, and the dipole scan that goes with them.
+// The estimates of one contrast of one participant by one method, and the dipole scan that goes
+// with them.
 #pragma once
-#include <memory>
-#include <string>
-#include <vector>
-
 #include <headwater/app/participant.hpp>
 #include <headwater/inverse/dipole_scan.hpp>
 #include <headwater/inverse/indices.hpp>
 #include <headwater/inverse/peaks.hpp>
 #include <headwater/inverse/region_courses.hpp>
 #include <headwater/inverse/ridge.hpp>
+
+#include <memory>
+#include <string>
+#include <vector>
 
 namespace headwater {
 
@@ -25,24 +26,24 @@ struct WindowDipoles {
 struct LocatedWindow {
   TimeWindow window;
   SampleRange samples;
-  Eigen::VectorXd map;                 ///< N, rms over the window, SI
+  Eigen::VectorXd map;  ///< N, rms over the window, SI
   std::vector<Peak> peaks;
   std::vector<PowerIndex> indices;
-  FitQuality fit;                      ///< explained_variance NaN where the method defines none
+  FitQuality fit;  ///< explained_variance NaN where the method defines none
 };
 
 struct LocatedContrast {
-  SourceOperator inverse;              ///< kernel and map emptied after use unless courses are written
-  RegularisationChoice regularisation; ///< used = NaN for LCMV
-  int iterations = 0;                  ///< eLORETA
+  SourceOperator inverse;  ///< kernel and map emptied after use unless courses are written
+  RegularisationChoice regularisation;  ///< used = NaN for LCMV
+  int iterations = 0;                   ///< eLORETA
   bool converged = true;
   SourceEstimate estimate;
   RegionCourses courses;
   std::vector<LocatedWindow> windows;
 };
 
-/// Locates the contrasts of one participant, one at a time. Factorisations are shared between contrasts
-/// whose noise covariances are proportional.
+/// Locates the contrasts of one participant, one at a time. Factorisations are shared between
+/// contrasts whose noise covariances are proportional.
 class Locator {
  public:
   Locator(const Experiment& experiment, const ParticipantData& participant);

@@ -1,11 +1,11 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // One participant's data, ready to be located; and the mean over participants as one more.
 #pragma once
+#include <headwater/app/forward_model.hpp>
+
 #include <memory>
 #include <string>
 #include <vector>
-
-#include <headwater/app/forward_model.hpp>
 
 namespace headwater {
 
@@ -18,7 +18,7 @@ struct ParticipantData {
   NoiseCovariance noise;                    ///< of a single trial
   std::vector<ContrastWaveform> contrasts;  ///< in the experiment's order
   std::shared_ptr<const ForwardModel> forward;
-  std::vector<std::string> inputs;          ///< files read, absolute
+  std::vector<std::string> inputs;  ///< files read, absolute
 };
 
 /// Reads the averages of all conditions, edits and checks channels, estimates the noise, forms the
@@ -26,8 +26,8 @@ struct ParticipantData {
 ParticipantData load_participant(const Experiment& experiment, const std::string& participant,
                                  const TrialCounts& counts, ForwardModels& forward_models);
 
-/// The mean: averages and contrasts over the channels that all have, noise propagated, electrodes at
-/// their mean positions. Of at least one participant.
+/// The mean: averages and contrasts over the channels that all have, noise propagated, electrodes
+/// at their mean positions. Of at least one participant.
 ParticipantData mean_participant(const Experiment& experiment,
                                  const std::vector<const ParticipantData*>& participants,
                                  ForwardModels& forward_models);

@@ -2,8 +2,8 @@
 // The results folder: names, tables and volumes, laid out like a BIDS derivative.
 //
 //   results/dataset_description.json  provenance.json  summary.tsv
-//           grid.tsv  points.tsv  electrodes.tsv             (of each participant where caps differ)
-//           sub-01/sub-01_contrast-<label>_waveform.tsv      average reference, uV
+//           grid.tsv  points.tsv  electrodes.tsv             (of each participant where caps
+//           differ) sub-01/sub-01_contrast-<label>_waveform.tsv      average reference, uV
 //                  sub-01_contrast-<label>_dipoles.tsv       one point or a mirrored pair
 //                  sub-01_contrast-<label>_method-<m>_peaks.tsv  _regions.tsv  _regionCourses.tsv
 //                                                     _indices.tsv  _fit.json
@@ -11,23 +11,23 @@
 //           mean/...                                         the mean over participants
 // Volumes are in MNI space. Nothing names a person, a user, a host or an absolute path.
 #pragma once
-#include <filesystem>
-#include <string>
-#include <vector>
-
 #include <headwater/app/located.hpp>
 #include <headwater/base/json.hpp>
 #include <headwater/base/table.hpp>
+
+#include <filesystem>
+#include <string>
+#include <vector>
 
 namespace headwater {
 
 /// One line of summary.tsv, and of what `locate` prints.
 struct SummaryRow {
   std::string participant, contrast, method, window;
-  std::string kind;             ///< "mirrored pair" or "peak"
+  std::string kind;                                 ///< "mirrored pair" or "peak"
   Eigen::Vector3d mni_m = Eigen::Vector3d::Zero();  ///< right half of a pair
   std::string side, gyrus, lobe;
-  double value = 0;             ///< in `unit`
+  double value = 0;  ///< in `unit`
   std::string unit;
   double latency_s = 0;
   double explained_variance = 0;  ///< 0 to 1; NaN where the method defines none
@@ -47,8 +47,8 @@ class ResultsFolder {
                              const std::string& method, const std::string& window,
                              const std::string& suffix) const;
 
-  /// dataset_description.json, and grid, points and electrodes of a forward model: in the root, or in a
-  /// participant's folder when caps differ.
+  /// dataset_description.json, and grid, points and electrodes of a forward model: in the root, or
+  /// in a participant's folder when caps differ.
   void write_description(const std::string& title) const;
   void write_forward(const ForwardModel& forward, const std::string& participant) const;
   void write_waveform(const std::string& participant, const ContrastWaveform& contrast,

@@ -1,23 +1,26 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// The stages in their order: inspect (read and check everything, estimate nothing), then locate (sources of
-// every contrast for every participant, and for the mean over them). One participant's trouble does not stop
-// the others. Participants run in parallel; the results do not depend on the number of jobs.
+// The stages in their order: inspect (read and check everything, estimate nothing), then locate
+// (sources of every contrast for every participant, and for the mean over them). One participant's
+// trouble does not stop the others. Participants run in parallel; the results do not depend on the
+// number of jobs.
 #pragma once
+#include <headwater/app/participant.hpp>
+#include <headwater/app/results_folder.hpp>
+#include <headwater/base/error.hpp>
+
 #include <functional>
 #include <string>
 #include <utility>
 #include <vector>
 
-#include <headwater/app/participant.hpp>
-#include <headwater/base/error.hpp>
-#include <headwater/app/results_folder.hpp>
-
 namespace headwater {
 
 struct StageOptions {
-  Labels participants, contrasts, methods;  ///< empty: all of the experiment's ("mean" is a participant)
-  int jobs = 0;                             ///< 0: as many as the machine has
-  std::function<void(const std::string&)> finished;  ///< called with each participant's name; may be empty
+  Labels participants, contrasts,
+      methods;   ///< empty: all of the experiment's ("mean" is a participant)
+  int jobs = 0;  ///< 0: as many as the machine has
+  std::function<void(const std::string&)>
+      finished;  ///< called with each participant's name; may be empty
 };
 
 struct Failure {
@@ -26,7 +29,8 @@ struct Failure {
 };
 
 struct InspectReport {
-  std::vector<ParticipantData> participants;  ///< those that could be read, in the experiment's order
+  std::vector<ParticipantData>
+      participants;  ///< those that could be read, in the experiment's order
   std::vector<Failure> failures;
 };
 
@@ -35,7 +39,8 @@ struct LocateReport {
   std::vector<Failure> failures;
 };
 
-/// The experiment with only the asked-for contrasts and methods. Throws ExperimentError for unknown names.
+/// The experiment with only the asked-for contrasts and methods. Throws ExperimentError for unknown
+/// names.
 Experiment select(const Experiment& experiment, const StageOptions& options);
 
 /// Reads every participant that is asked for (all, where the mean is wanted).

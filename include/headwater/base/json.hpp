@@ -43,10 +43,10 @@ class Json {
   bool is_array() const { return std::holds_alternative<Array>(value_); }
   /// Member of an object, or null pointer.
   const Json* find(std::string_view key) const;
-  const Array& items() const;      ///< throws std::logic_error when not an array
-  const Object& members() const;   ///< throws std::logic_error when not an object
-  std::string text() const;        ///< throws std::logic_error when not a string
-  double number() const;           ///< throws std::logic_error when not a number
+  const Array& items() const;     ///< throws std::logic_error when not an array
+  const Object& members() const;  ///< throws std::logic_error when not an object
+  std::string text() const;       ///< throws std::logic_error when not a string
+  double number() const;          ///< throws std::logic_error when not a number
 
   /// Indented text, two spaces, members in order, numbers in shortest round-trip form; a list of
   /// plain values that fits a line stays on it.

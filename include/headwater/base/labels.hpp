@@ -2,6 +2,7 @@
 // Names of channels, conditions, participants: values are joined by label, never by position.
 #pragma once
 #include <Eigen/Core>
+
 #include <optional>
 #include <string>
 #include <string_view>

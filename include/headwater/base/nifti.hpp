@@ -1,12 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// NIfTI-1 volumes through nifticlib. Written: .nii.gz, float32, sform and qform code 4 (MNI), mm and s,
-// 4-D for a series (pixdim[4] = time step, toffset = first time). Written values outside the source
-// grid are 0. Read: any single-file NIfTI-1 of 3 or 4 dimensions; scl_slope and scl_inter applied (slope 0: none);
-// the affine is the sform, or the qform where there is no sform.
+// NIfTI-1 volumes through nifticlib. Written: .nii.gz, float32, sform and qform code 4 (MNI), mm
+// and s, 4-D for a series (pixdim[4] = time step, toffset = first time). Written values outside the
+// source grid are 0. Read: any single-file NIfTI-1 of 3 or 4 dimensions; scl_slope and scl_inter
+// applied (slope 0: none); the affine is the sform, or the qform where there is no sform.
 #pragma once
-#include <filesystem>
-
 #include <headwater/base/volume.hpp>
+
+#include <filesystem>
 
 namespace headwater {
 

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Progress of a long loop, on standard error: one bar that redraws itself on a terminal, a plain line
-// for each finished item elsewhere. Safe to call from several threads.
+// Progress of a long loop, on standard error: one bar that redraws itself on a terminal, a plain
+// line for each finished item elsewhere. Safe to call from several threads.
 #pragma once
 #include <cstddef>
 #include <cstdio>

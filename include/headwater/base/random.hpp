@@ -1,11 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Random numbers that are the same on every machine, for a seed and a stream name, however many
-// threads run: each use takes a stream of its own by name. Generator: xoshiro256++ (Blackman & Vigna
-// 2021, ACM Trans Math Softw 47:36), seeded through splitmix64 from seed and an FNV-1a hash of the
-// name. Normal deviates by the Box-Muller transform (1958), since the standard library's are not
-// specified.
+// threads run: each use takes a stream of its own by name. Generator: xoshiro256++ (Blackman &
+// Vigna 2021, ACM Trans Math Softw 47:36), seeded through splitmix64 from seed and an FNV-1a hash
+// of the name. Normal deviates by the Box-Muller transform (1958), since the standard library's are
+// not specified.
 #pragma once
 #include <Eigen/Core>
+
 #include <array>
 #include <cstdint>
 #include <string_view>

@@ -14,7 +14,8 @@ struct SphereFit {
   bool converged = false;    ///< last step below 1e-12 radius
 };
 
-/// points: 3 by #points, any unit. Throws InputError with fewer than 4 points or points in one plane.
+/// points: 3 by #points, any unit. Throws InputError with fewer than 4 points or points in one
+/// plane.
 SphereFit fit_sphere(const Eigen::Ref<const Eigen::Matrix3Xd>& points);
 
 }  // namespace headwater

@@ -3,14 +3,15 @@
 // LF or CRLF, "n/a" for missing. Written tables have a JSON file beside them that describes each
 // column (unit, meaning).
 #pragma once
+#include <headwater/base/labels.hpp>
+
 #include <Eigen/Core>
+
 #include <filesystem>
 #include <optional>
 #include <string>
 #include <string_view>
 #include <vector>
-
-#include <headwater/base/labels.hpp>
 
 namespace headwater {
 
@@ -31,8 +32,8 @@ struct Table {
 };
 
 /// Errors (InputError): missing file, no header, repeated or empty column names, ragged rows (line,
-/// cells found, cells expected), no rows, NUL bytes. Blank lines at the end are ignored; a comma- or
-/// semicolon-separated file is named as such.
+/// cells found, cells expected), no rows, NUL bytes. Blank lines at the end are ignored; a comma-
+/// or semicolon-separated file is named as such.
 Table read_table(const std::filesystem::path& path, std::string_view what);
 Table parse_table(std::string_view text, const std::string& source);
 

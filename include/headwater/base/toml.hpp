@@ -15,7 +15,7 @@ struct TomlValue {
   using Table = std::vector<std::pair<std::string, TomlValue>>;  ///< in document order
 
   std::variant<bool, long long, double, std::string, Array, Table> value;
-  int line = 0;         ///< where the value stands
+  int line = 0;  ///< where the value stands
   int column = 0;
 
   bool is_table() const { return std::holds_alternative<Table>(value); }
@@ -24,7 +24,7 @@ struct TomlValue {
   bool is_number() const {
     return std::holds_alternative<long long>(value) || std::holds_alternative<double>(value);
   }
-  double number() const;                       ///< integers too
+  double number() const;                              ///< integers too
   const TomlValue* find(std::string_view key) const;  ///< member of a table, or null
   /// "a number", "text", "a list", "a table", "true or false": for messages.
   std::string kind() const;

@@ -1,22 +1,23 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// A second opinion beside the distributed maps: the one point, or the one mirrored pair of points, whose
-// dipoles of free orientation explain a scalp map best.
+// A second opinion beside the distributed maps: the one point, or the one mirrored pair of points,
+// whose dipoles of free orientation explain a scalp map best.
 //
-// In the reference-free subspace, not whitened (a misfit of the head model outweighs the noise of an
-// average): with Q_l an orthonormal basis of the columns of K_l (3) or [K_l K_mirror(l)] (6),
+// In the reference-free subspace, not whitened (a misfit of the head model outweighs the noise of
+// an average): with Q_l an orthonormal basis of the columns of K_l (3) or [K_l K_mirror(l)] (6),
 //   unexplained(l) = 1 - |Q_l'y|^2 / |y|^2.
-// Two symmetric generators, each in its own hemisphere, are merged by every smooth inverse into one false
-// maximum, deep and near the midline. Whether a pair earns its three more parameters is judged by the
-// Bayesian information criterion (Schwarz 1978 Ann Stat 6:461), n ln(unexplained) + k ln(n), n = M-1,
-// k = 6 (position, moment) for one point, 9 for a mirrored pair; a difference above 2 counts as evidence
-// (Kass & Raftery 1995 J Am Stat Assoc 90:773). Pairs closer than 40 mm are left out: their two halves
-// cannot be told apart.
+// Two symmetric generators, each in its own hemisphere, are merged by every smooth inverse into one
+// false maximum, deep and near the midline. Whether a pair earns its three more parameters is
+// judged by the Bayesian information criterion (Schwarz 1978 Ann Stat 6:461), n ln(unexplained) + k
+// ln(n), n = M-1, k = 6 (position, moment) for one point, 9 for a mirrored pair; a difference above
+// 2 counts as evidence (Kass & Raftery 1995 J Am Stat Assoc 90:773). Pairs closer than 40 mm are
+// left out: their two halves cannot be told apart.
 #pragma once
-#include <Eigen/Core>
-#include <vector>
-
 #include <headwater/inverse/subspace.hpp>
 #include <headwater/model/source_grid.hpp>
+
+#include <Eigen/Core>
+
+#include <vector>
 
 namespace headwater {
 

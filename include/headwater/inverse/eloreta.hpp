@@ -1,15 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// eLORETA (Pascual-Marqui 2007 arXiv:0710.3341): source weights W_l (3 x 3) that make the localisation of
-// any single source exact,
-//   W_l <- [K_l'(K W^-1 K' + lambda C)^-1 K_l]^(1/2), all blocks at once from W = I until the largest
-//   relative change of a block is below the tolerance;
-//   J_l = W_l^-1 K_l'(K W^-1 K' + lambda C)^-1 y.
-// W depends on lambda, and its scale is that of a resolution: about (M-1)/3N. So lambda is chosen from the
-// gram matrix K W^-1 K' of weights that were adapted to a first guess. Unit: A m.
+// eLORETA (Pascual-Marqui 2007 arXiv:0710.3341): source weights W_l (3 x 3) that make the
+// localisation of any single source exact,
+//   W_l <- [K_l'(K W^-1 K' + lambda C)^-1 K_l]^(1/2), all blocks at once from W = I until the
+//   largest relative change of a block is below the tolerance; J_l = W_l^-1 K_l'(K W^-1 K' + lambda
+//   C)^-1 y.
+// W depends on lambda, and its scale is that of a resolution: about (M-1)/3N. So lambda is chosen
+// from the gram matrix K W^-1 K' of weights that were adapted to a first guess. Unit: A m.
 #pragma once
-#include <vector>
-
 #include <headwater/inverse/ridge.hpp>
+
+#include <vector>
 
 namespace headwater {
 

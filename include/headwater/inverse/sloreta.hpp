@@ -1,9 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // sLORETA (Pascual-Marqui 2002 Methods Find Exp Clin Pharmacol 24D:5):
 //   T = K'(K K' + lambda C)^-1,  S = T K,  standardised moment S_ll^(-1/2) J_l, J = T y,
-// so that its squared length is J_l' S_ll^-1 J_l. Zero peak error for one noise-free source at any point,
-// orientation and lambda. Unit: A m (S is a resolution matrix, without unit): a current divided by the
-// root of the point's own resolution, not the strength of a source.
+// so that its squared length is J_l' S_ll^-1 J_l. Zero peak error for one noise-free source at any
+// point, orientation and lambda. Unit: A m (S is a resolution matrix, without unit): a current
+// divided by the root of the point's own resolution, not the strength of a source.
 #pragma once
 #include <headwater/inverse/ridge.hpp>
 

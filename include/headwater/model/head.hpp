@@ -1,8 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The spherical head: concentric shells, and the frame in which they stand.
 //
-// Head frame: RAS axes (+x right, +y anterior, +z superior), metres, origin C = (0, -15.4, -2.8) mm in
-// MNI space, the centre about which the standard electrode directions fit the template scalp best.
+// Head frame: RAS axes (+x right, +y anterior, +z superior), metres, origin C = (0, -15.4, -2.8) mm
+// in MNI space, the centre about which the standard electrode directions fit the template scalp
+// best.
 #pragma once
 #include <Eigen/Core>
 
@@ -17,7 +18,8 @@ struct HeadModel {
   Eigen::VectorXd conductivity_S_per_m;
 };
 
-/// Brain, skull, scalp at 0.87 : 0.92 : 1 of radius 92 mm; 0.33, 0.0132, 0.33 S/m (skull ratio 1:25).
+/// Brain, skull, scalp at 0.87 : 0.92 : 1 of radius 92 mm; 0.33, 0.0132, 0.33 S/m (skull ratio
+/// 1:25).
 HeadModel default_head();
 
 /// Throws ExperimentError: no shell, unequal lengths, radii not increasing or not positive,

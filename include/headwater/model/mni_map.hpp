@@ -1,9 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// From MNI space to the spherical model and back: a radial homothety about the head centre C. A point
-// at distance r from C in direction u goes to r / R(u) * 0.83 * scalp radius in the same direction,
-// R(u) the hull radius. Invertible, exact in left-right symmetry; the hull itself lands at 0.83 of the
-// scalp radius. Mean displacement on the template's own scale 5.7 mm; basal points move most (up to
-// 37 mm). A published relative: Spinelli et al. 2000 Brain Topography 13:115.
+// From MNI space to the spherical model and back: a radial homothety about the head centre C. A
+// point at distance r from C in direction u goes to r / R(u) * 0.83 * scalp radius in the same
+// direction, R(u) the hull radius. Invertible, exact in left-right symmetry; the hull itself lands
+// at 0.83 of the scalp radius. Mean displacement on the template's own scale 5.7 mm; basal points
+// move most (up to 37 mm). A published relative: Spinelli et al. 2000 Brain Topography 13:115.
 #pragma once
 #include <Eigen/Core>
 

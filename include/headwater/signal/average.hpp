@@ -1,13 +1,14 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Averaged recordings of one participant: one table for each condition.
 #pragma once
-#include <Eigen/Core>
-#include <filesystem>
-#include <string>
-
 #include <headwater/base/labels.hpp>
 #include <headwater/base/table.hpp>
 #include <headwater/signal/electrodes.hpp>
+
+#include <Eigen/Core>
+
+#include <filesystem>
+#include <string>
 
 namespace headwater {
 
@@ -25,11 +26,11 @@ enum class VoltageUnit { microvolt, millivolt, volt };
 double volts_per(VoltageUnit unit);
 std::string unit_name(VoltageUnit unit);  ///< "uV", "mV", "V"
 
-/// Reads a table (`time_s` first, then channels), edits its channels, checks it. Errors (InputError):
-/// those of the table; no time_s column first; times not increasing or not evenly spaced (1e-3 of a
-/// step; the writer's rounding allowed); time in ms (a step above 0.5 s); every channel flat; the
-/// median over channels of the peak-to-peak voltage outside 0.1 to 1000 uV (says which unit would be
-/// plausible, and to set averages.unit).
+/// Reads a table (`time_s` first, then channels), edits its channels, checks it. Errors
+/// (InputError): those of the table; no time_s column first; times not increasing or not evenly
+/// spaced (1e-3 of a step; the writer's rounding allowed); time in ms (a step above 0.5 s); every
+/// channel flat; the median over channels of the peak-to-peak voltage outside 0.1 to 1000 uV (says
+/// which unit would be plausible, and to set averages.unit).
 Average read_average(const std::filesystem::path& path, const ChannelEdits& edits,
                      VoltageUnit unit);
 
@@ -38,8 +39,8 @@ class TrialCounts {
  public:
   /// The same count for every average.
   explicit TrialCounts(double trials_each) : each_(trials_each) {}
-  /// Checks columns and whole numbers, all rows at once. A count of zero is legal here: it stops only
-  /// the participant who needs it.
+  /// Checks columns and whole numbers, all rows at once. A count of zero is legal here: it stops
+  /// only the participant who needs it.
   explicit TrialCounts(Table table);
   /// Throws InputError when there is no row, more than one, or zero trials.
   double trials(std::string_view participant, std::string_view condition) const;

@@ -1,13 +1,14 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Contrasts of conditions: weights, or crossed factor effects of any order.
 #pragma once
+#include <headwater/signal/average.hpp>
+#include <headwater/signal/noise_covariance.hpp>
+
 #include <Eigen/Core>
+
 #include <map>
 #include <string>
 #include <vector>
-
-#include <headwater/signal/average.hpp>
-#include <headwater/signal/noise_covariance.hpp>
 
 namespace headwater {
 
@@ -27,8 +28,8 @@ struct EffectFactor {
 };
 
 /// Weights of an effect. Over the conditions whose levels are among those named, the sign is the
-/// product over factors of +1 (first) or -1 (second); the weight is the sign divided by the number of
-/// conditions that share this combination of levels. One factor: difference of level means (main
+/// product over factors of +1 (first) or -1 (second); the weight is the sign divided by the number
+/// of conditions that share this combination of levels. One factor: difference of level means (main
 /// effect, +-1/2 in a 2 x 2 design). Two: difference of differences (+-1). And so on. Throws
 /// ExperimentError: unknown factor or level (with a suggestion), an empty cell (named).
 std::vector<ConditionWeight> effect_weights(const std::vector<Condition>& conditions,
@@ -39,9 +40,9 @@ struct ContrastWaveform {
   std::string name;
   Labels channels;
   Eigen::VectorXd times_s;
-  Eigen::MatrixXd data_V;            ///< #channels by #samples, average reference
+  Eigen::MatrixXd data_V;  ///< #channels by #samples, average reference
   double effective_trials = 0;
-  Eigen::MatrixXd noise_V2;          ///< (M-1) by (M-1): covariance of the contrast in the subspace
+  Eigen::MatrixXd noise_V2;  ///< (M-1) by (M-1): covariance of the contrast in the subspace
 };
 
 /// Throws InputError when a weighted condition has no average.
@@ -49,9 +50,9 @@ ContrastWaveform form_contrast(const std::string& name, const std::vector<Condit
                                const std::vector<Average>& averages, const NoiseCovariance& noise);
 
 /// Mean over S participants: waveforms averaged; covariance sum_s C_s / S^2; effective trials such
-/// that the mean over channels of the variance agrees: n = tr(mean of single-trial C_s) / tr(noise).
-/// Channels: those common to all, in the order of the first. `noise_of` gives each participant's
-/// single-trial covariance, in the same order.
+/// that the mean over channels of the variance agrees: n = tr(mean of single-trial C_s) /
+/// tr(noise). Channels: those common to all, in the order of the first. `noise_of` gives each
+/// participant's single-trial covariance, in the same order.
 ContrastWaveform mean_contrast(const std::vector<ContrastWaveform>& contrasts,
                                const std::vector<NoiseCovariance>& noise_of);
 

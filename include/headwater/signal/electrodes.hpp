@@ -1,14 +1,15 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Electrodes and their positions.
 #pragma once
+#include <headwater/base/labels.hpp>
+#include <headwater/base/sphere_fit.hpp>
+
 #include <Eigen/Core>
+
 #include <filesystem>
 #include <map>
 #include <string>
 #include <vector>
-
-#include <headwater/base/labels.hpp>
-#include <headwater/base/sphere_fit.hpp>
 
 namespace headwater {
 
@@ -34,9 +35,9 @@ struct ChannelPlan {
   std::vector<Eigen::Index> source;
 };
 
-/// Applies the edits to the channel names of one file. Throws InputError, all problems in one message:
-/// names to drop or rename that are not there, a name that occurs twice afterwards, fewer than 8
-/// channels left, a `zero` that is already a channel (say: drop the column first).
+/// Applies the edits to the channel names of one file. Throws InputError, all problems in one
+/// message: names to drop or rename that are not there, a name that occurs twice afterwards, fewer
+/// than 8 channels left, a `zero` that is already a channel (say: drop the column first).
 ChannelPlan plan_channels(const Labels& file_channels, const ChannelEdits& edits,
                           const std::string& where);
 
@@ -45,19 +46,19 @@ enum class PositionSpace { head, mni };
 
 /// Reads `name x_mm y_mm z_mm`, or a BIDS electrodes.tsv (`name x y z`; the unit is
 /// EEGCoordinateUnits - mm, cm or m - of the coordsystem.json beside it: the file whose name has
-/// "electrodes.tsv" replaced by "coordsystem.json", or plain coordsystem.json). MNI positions become
-/// head-frame positions by subtracting the head's centre (0, -15.4, -2.8) mm. Rows with n/a positions
-/// are left out. Errors (InputError): repeated names, fewer than 4 positions, unit not stated, a
-/// stated unit that the numbers contradict (fitted sphere radius outside 40 to 200 mm: says which
-/// unit would make a head).
+/// "electrodes.tsv" replaced by "coordsystem.json", or plain coordsystem.json). MNI positions
+/// become head-frame positions by subtracting the head's centre (0, -15.4, -2.8) mm. Rows with n/a
+/// positions are left out. Errors (InputError): repeated names, fewer than 4 positions, unit not
+/// stated, a stated unit that the numbers contradict (fitted sphere radius outside 40 to 200 mm:
+/// says which unit would make a head).
 Montage read_positions(const std::filesystem::path& path, PositionSpace space);
 
 /// Standard positions of the labels on a sphere of radius_m. Throws InputError that lists every
 /// unknown name at once, with the nearest standard name, and says: rename, drop, or give a table.
 Montage standard_montage(const Labels& labels, double radius_m);
 
-/// The labels' positions out of a table, joined by name (case ignored), in the labels' order. Throws
-/// InputError that lists every label without a position.
+/// The labels' positions out of a table, joined by name (case ignored), in the labels' order.
+/// Throws InputError that lists every label without a position.
 Montage select_positions(const Montage& table, const Labels& labels, const std::string& where);
 
 /// Least-squares sphere through the positions (m), centre in the head frame.

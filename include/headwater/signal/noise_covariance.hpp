@@ -3,24 +3,26 @@
 //
 // An average of n trials carries noise of covariance C/n, C that of one trial. So:
 //   baseline  C = sum_k n_k sum_t r r' / sum_k (T-1), r = B'(d_k(t) - mean over the window)
-//   residual  where there is no baseline: samples later than a stated latency. The trial-weighted mean
-//             over conditions is subtracted at each sample (it carries what the conditions share), then
-//             each channel's straight line over the window: C = sum_k n_k sum_t r r' / ((K-1)(T-2));
-//             with one condition only the line is subtracted: / (T-2). Response differences that
-//             outlast the latency count as noise.
+//   residual  where there is no baseline: samples later than a stated latency. The trial-weighted
+//   mean
+//             over conditions is subtracted at each sample (it carries what the conditions share),
+//             then each channel's straight line over the window: C = sum_k n_k sum_t r r' /
+//             ((K-1)(T-2)); with one condition only the line is subtracted: / (T-2). Response
+//             differences that outlast the latency count as noise.
 //   table     the user's, labelled, uV^2, one trial.
 // Shrinkage towards scaled identity: S* = (1-a) S + a tr(S)/p I. Weight a: Ledoit & Wolf 2004
 // J Multivar Anal 88:365, with the variance of S enlarged by tau = 1 + 2 sum_k (1-k/T) rho_k^2 for
-// samples that are correlated in time (rho_k: mean autocorrelation over channels, weighted by variance,
-// at lag k, Bartlett's formula; common practice), or a number from the user.
+// samples that are correlated in time (rho_k: mean autocorrelation over channels, weighted by
+// variance, at lag k, Bartlett's formula; common practice), or a number from the user.
 #pragma once
+#include <headwater/signal/average.hpp>
+
 #include <Eigen/Core>
+
 #include <filesystem>
 #include <optional>
 #include <string>
 #include <vector>
-
-#include <headwater/signal/average.hpp>
 
 namespace headwater {
 
@@ -43,9 +45,10 @@ struct NoiseOptions {
   std::optional<double> shrinkage;  ///< 0 to 1; empty: Ledoit-Wolf (table: 0)
 };
 
-/// From averages of one participant (consistent channels and times). Throws InputError: no sample in
-/// the window, fewer than 5 samples, zero trials, and - after shrinkage - a matrix that is singular
-/// (smallest eigenvalue below 1e-12 of the largest): says rank, channels, and to use shrinkage.
+/// From averages of one participant (consistent channels and times). Throws InputError: no sample
+/// in the window, fewer than 5 samples, zero trials, and - after shrinkage - a matrix that is
+/// singular (smallest eigenvalue below 1e-12 of the largest): says rank, channels, and to use
+/// shrinkage.
 NoiseCovariance estimate_noise(const std::vector<Average>& averages, const NoiseOptions& options);
 
 /// The user's table: first column `name`, then one column for each channel, uV^2 of a single trial;

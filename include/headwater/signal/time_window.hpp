@@ -1,9 +1,10 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #pragma once
-#include <Eigen/Core>
-#include <string>
-
 #include <headwater/base/labels.hpp>
+
+#include <Eigen/Core>
+
+#include <string>
 
 namespace headwater {
 

@@ -1,23 +1,28 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "app/cli/command.hpp"
 
+#include <fmt/core.h>
+
 #include <algorithm>
 #include <cstdio>
-
-#include <fmt/core.h>
 
 namespace headwater::cli {
 
 void add_experiment_options(CLI::App& command, ExperimentOptions& options) {
   command.add_option("FILE", options.file, "Experiment file (see `headwater keys`)")->required();
-  command.add_option("--participant", options.participants, "Only these participants; 'mean' is one");
+  command.add_option("--participant", options.participants,
+                     "Only these participants; 'mean' is one");
   command.add_option("--contrast", options.contrasts, "Only these contrasts");
   command.add_option("--method", options.methods,
                      "Only these methods: minimum-norm, sloreta, eloreta, lcmv");
-  command.add_option("--output", options.output, "Results folder, in place of the experiment file's");
-  command.add_option("--jobs", options.jobs, "Participants at a time (default: one for each processor)")
+  command.add_option("--output", options.output,
+                     "Results folder, in place of the experiment file's");
+  command
+      .add_option("--jobs", options.jobs,
+                  "Participants at a time (default: one for each processor)")
       ->check(CLI::NonNegativeNumber);
-  command.add_option("--seed", options.seed, "Seed of random draws, in place of the experiment file's")
+  command
+      .add_option("--seed", options.seed, "Seed of random draws, in place of the experiment file's")
       ->check(CLI::NonNegativeNumber);
   command.add_flag("--quiet", options.quiet, "No progress, no summary");
   command.add_flag("--verbose", options.verbose, "Say more");

@@ -1,12 +1,13 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// What every command shares: options that mean the same everywhere, how results and messages are printed,
-// and the exit code.
+// What every command shares: options that mean the same everywhere, how results and messages are
+// printed, and the exit code.
 #pragma once
+#include <headwater/app/stages.hpp>
+
 #include <CLI/CLI.hpp>
+
 #include <string>
 #include <vector>
-
-#include <headwater/app/stages.hpp>
 
 namespace headwater::cli {
 
@@ -31,8 +32,8 @@ void add_experiment_options(CLI::App& command, ExperimentOptions& options);
 Experiment read_selected(const ExperimentOptions& options);
 StageOptions stage_options(const ExperimentOptions& options);
 
-/// Prints failures to standard error; 0, or 4 when some participants failed, or the trouble of the first
-/// when all did.
+/// Prints failures to standard error; 0, or 4 when some participants failed, or the trouble of the
+/// first when all did.
 int report_failures(const std::vector<Failure>& failures, bool any_done);
 
 /// Columns aligned for a terminal.

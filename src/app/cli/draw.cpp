@@ -1,17 +1,18 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <fmt/core.h>
+#include "app/cli/command.hpp"
 
 #include <headwater/app/figures.hpp>
 #include <headwater/base/progress.hpp>
 
-#include "app/cli/command.hpp"
+#include <fmt/core.h>
 
 namespace headwater::cli {
 
 void add_draw(CLI::App& program, Outcome&) {
   auto options = std::make_shared<ExperimentOptions>();
   auto* command = program.add_subcommand(
-      "draw", "Pictures of located sources, without a display (by default of the mean over participants)");
+      "draw",
+      "Pictures of located sources, without a display (by default of the mean over participants)");
   add_experiment_options(*command, *options);
   command->footer("Example: headwater draw experiment.toml --method sloreta");
   command->callback([options] {

@@ -1,9 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <fmt/core.h>
+#include "app/cli/command.hpp"
 
 #include <headwater/app/example.hpp>
 
-#include "app/cli/command.hpp"
+#include <fmt/core.h>
 
 namespace headwater::cli {
 
@@ -19,7 +19,8 @@ void add_example(CLI::App& program, Outcome&) {
   command->add_option("DIR", options->folder, "New or empty folder")->required();
   command->add_option("--seed", options->seed, "Seed of the invented data");
   command->add_flag("--quiet", options->quiet, "Print nothing");
-  command->footer("Example: headwater example late-beats && headwater run late-beats/experiment.toml");
+  command->footer(
+      "Example: headwater example late-beats && headwater run late-beats/experiment.toml");
   command->callback([options] {
     write_example(options->folder, options->seed);
     if (!options->quiet)

@@ -1,9 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <fmt/core.h>
+#include "app/cli/command.hpp"
 
 #include <headwater/app/keys.hpp>
 
-#include "app/cli/command.hpp"
+#include <fmt/core.h>
 
 namespace headwater::cli {
 

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <fmt/core.h>
+#include "app/cli/command.hpp"
 
 #include <headwater/base/atomic_file.hpp>
 #include <headwater/base/error.hpp>
@@ -8,7 +8,7 @@
 #include <headwater/model/lead_field.hpp>
 #include <headwater/signal/reference.hpp>
 
-#include "app/cli/command.hpp"
+#include <fmt/core.h>
 
 namespace headwater::cli {
 namespace {
@@ -42,8 +42,8 @@ NamedPoints read_points(const std::string& path, const char* what) {
 
 void write_lead_field(const Options& options) {
   HeadModel head;
-  head.radii_m = Eigen::Map<const Eigen::VectorXd>(options.radii_mm.data(),
-                                                   static_cast<Eigen::Index>(options.radii_mm.size())) *
+  head.radii_m = Eigen::Map<const Eigen::VectorXd>(
+                     options.radii_mm.data(), static_cast<Eigen::Index>(options.radii_mm.size())) *
                  kMillimetre;
   head.conductivity_S_per_m = Eigen::Map<const Eigen::VectorXd>(
       options.conductivity.data(), static_cast<Eigen::Index>(options.conductivity.size()));
@@ -64,20 +64,28 @@ void add_leadfield(CLI::App& program, Outcome&) {
   auto options = std::make_shared<Options>();
   auto* command = program.add_subcommand(
       "leadfield", "Lead field of electrodes and points in concentric shells, V/(A m), as a table");
-  command->add_option("--electrodes", options->electrodes,
-                      "Table name x_mm y_mm z_mm, head frame; used as directions")->required();
-  command->add_option("--points", options->points, "Table name x_mm y_mm z_mm, head frame")->required();
-  command->add_option("--radii-mm", options->radii_mm, "Radii of the shells, from inside to outside")
-      ->delimiter(',')->required();
+  command
+      ->add_option("--electrodes", options->electrodes,
+                   "Table name x_mm y_mm z_mm, head frame; used as directions")
+      ->required();
+  command->add_option("--points", options->points, "Table name x_mm y_mm z_mm, head frame")
+      ->required();
+  command
+      ->add_option("--radii-mm", options->radii_mm, "Radii of the shells, from inside to outside")
+      ->delimiter(',')
+      ->required();
   command->add_option("--conductivity-S-per-m", options->conductivity, "Conductivity of each shell")
-      ->delimiter(',')->required();
-  command->add_option("--reference", options->reference,
-                      "none (zero mean over the outer sphere) or average (of the electrodes)")
+      ->delimiter(',')
+      ->required();
+  command
+      ->add_option("--reference", options->reference,
+                   "none (zero mean over the outer sphere) or average (of the electrodes)")
       ->check(CLI::IsMember({"none", "average"}));
   command->add_option("--output", options->output, "Table to write")->required();
-  command->footer("Example: headwater leadfield --electrodes results/electrodes.tsv --points "
-                  "results/points.tsv --radii-mm 80,85,92 --conductivity-S-per-m 0.33,0.0132,0.33 "
-                  "--output leadfield.tsv");
+  command->footer(
+      "Example: headwater leadfield --electrodes results/electrodes.tsv --points "
+      "results/points.tsv --radii-mm 80,85,92 --conductivity-S-per-m 0.33,0.0132,0.33 "
+      "--output leadfield.tsv");
   command->callback([options] { write_lead_field(*options); });
 }
 

@@ -1,12 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <algorithm>
-
-#include <fmt/core.h>
+#include "app/cli/command.hpp"
 
 #include <headwater/base/progress.hpp>
 #include <headwater/base/units.hpp>
 
-#include "app/cli/command.hpp"
+#include <fmt/core.h>
+
+#include <algorithm>
 
 namespace headwater::cli {
 namespace {
@@ -23,8 +23,8 @@ void print_window(const std::vector<const SummaryRow*>& rows) {
   for (const auto* row : rows) {
     if (row->kind == "mirrored pair") {
       if (!pair_printed)  // the same for every method
-        fmt::print("  mirrored pair  {} and its mirror image, {}: {}\n", place_text(*row), row->gyrus,
-                   row->note);
+        fmt::print("  mirrored pair  {} and its mirror image, {}: {}\n", place_text(*row),
+                   row->gyrus, row->note);
       pair_printed = true;
       continue;
     }
@@ -58,8 +58,8 @@ int locate_and_print(const ExperimentOptions& options, bool show_inspection) {
   const InspectReport read = inspect(experiment, stages);
   const bool talk = !options.quiet && !options.json;
   if (talk && show_inspection && !read.participants.empty())
-    fmt::print("{} of {} participants read (`headwater inspect` shows each).\n", read.participants.size(),
-               read.participants.size() + read.failures.size());
+    fmt::print("{} of {} participants read (`headwater inspect` shows each).\n",
+               read.participants.size(), read.participants.size() + read.failures.size());
   if (options.verbose)
     for (const auto& participant : read.participants)
       fmt::print(stderr, "{}: {}\n", participant.name, participant.noise.source);
@@ -92,8 +92,8 @@ int locate_and_print(const ExperimentOptions& options, bool show_inspection) {
 
 void add_locate(CLI::App& program, Outcome& outcome) {
   auto options = std::make_shared<ExperimentOptions>();
-  auto* command =
-      program.add_subcommand("locate", "Sources of every contrast, for every participant and their mean");
+  auto* command = program.add_subcommand(
+      "locate", "Sources of every contrast, for every participant and their mean");
   add_experiment_options(*command, *options);
   command->footer("Example: headwater locate experiment.toml --participant mean --method sloreta");
   command->callback([options, &outcome] { outcome.exit_code = locate_and_print(*options, false); });

@@ -1,26 +1,28 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "app/cli/command.hpp"
+
+#include <headwater/base/error.hpp>
+#include <headwater/base/version.hpp>
+
+#include <fmt/core.h>
 #include <malloc.h>
 
 #include <cstdio>
 #include <exception>
 
-#include <fmt/core.h>
-
-#include <headwater/base/error.hpp>
-#include <headwater/base/version.hpp>
-
-#include "app/cli/command.hpp"
-
 int main(int argc, char** argv) {
   using namespace headwater;
-  // Matrices of 10 MB come and go: keep their pages, since fresh ones cost more than the arithmetic.
+  // Matrices of 10 MB come and go: keep their pages, since fresh ones cost more than the
+  // arithmetic.
   mallopt(M_MMAP_THRESHOLD, 1 << 30);
   mallopt(M_TRIM_THRESHOLD, 1 << 30);
 
-  CLI::App program("Locates the cortical generators of mismatch responses from EEG averages.", "headwater");
+  CLI::App program("Locates the cortical generators of mismatch responses from EEG averages.",
+                   "headwater");
   program.set_version_flag("--version", "headwater " + version() + "\n" + caution());
   program.require_subcommand(1);
-  program.footer("Start with: headwater example DIR, then headwater run DIR/experiment.toml\n\n" + caution());
+  program.footer("Start with: headwater example DIR, then headwater run DIR/experiment.toml\n\n" +
+                 caution());
   cli::Outcome outcome;
   cli::add_example(program, outcome);
   cli::add_inspect(program, outcome);
