@@ -10,6 +10,7 @@
 #include <algorithm>
 #include <cmath>
 #include <map>
+#include <stdexcept>
 
 namespace headwater {
 namespace {
@@ -52,8 +53,11 @@ PowerIndex summarise(const Comparison& comparison) {
     const double high = draws[std::min(low + 1, draws.size() - 1)];
     return draws[low] + (place - static_cast<double>(low)) * (high - draws[low]);
   };
-  index.low = std::max(index.value + quantile(0.025) - mean, -1.0);
-  index.high = std::min(index.value + quantile(0.975) - mean, 1.0);
+  // Noise adds power to both regions and so draws the index towards the noise's own: by about as
+  // much as the draws are drawn away from the value. The interval reaches that far back.
+  const double bias = mean - index.value;
+  index.low = std::max(index.value + quantile(0.025) - mean - std::max(bias, 0.0), -1.0);
+  index.high = std::min(index.value + quantile(0.975) - mean + std::max(-bias, 0.0), 1.0);
   return index;
 }
 
@@ -92,6 +96,7 @@ PowerIndices::PowerIndices(const SourceOperator& inverse, const Eigen::MatrixXd&
                            const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
                            const IndexOptions& options)
     : map_(inverse.map) {
+  if (options.draws < 2) throw std::logic_error("PowerIndices: an interval needs at least 2 draws");
   const Eigen::Index dimension = map_.rows();
   for (const auto& region : lobes) {
     if (region.lobe.empty() || region.side == Side::midline || region.points.empty()) continue;

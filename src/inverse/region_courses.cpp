@@ -27,6 +27,8 @@ struct Pattern {
 };
 
 Pattern dominant_pattern(const Eigen::MatrixXd& block, const Eigen::Matrix3Xd& outward) {
+  // Data of zeros have rank 0, which the eigensolver does not take.
+  if (block.cols() == 0) return {Eigen::VectorXd::Zero(block.rows()), 0};
   const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(block.transpose() * block);
   const Eigen::Index last = solver.eigenvalues().size() - 1;
   Pattern pattern;

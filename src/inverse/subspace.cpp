@@ -23,8 +23,11 @@ Subspace make_subspace(const Labels& channels, const Eigen::MatrixXd& gain,
   subspace.basis = reference_free_basis(count);
   subspace.gain.noalias() = subspace.basis.transpose() * gain;
   subspace.noise_V2 = noise_V2;
+  if (!gain.allFinite()) throw InputError("The lead field holds a value that is not a number.");
   const Eigen::LLT<Eigen::MatrixXd> factor(noise_V2);
-  if (factor.info() != Eigen::Success)
+  // A matrix of lower rank may be factorised all the same, by rounding; NaN passes every
+  // comparison.
+  if (!noise_V2.allFinite() || factor.info() != Eigen::Success || factor.rcond() < 1e-14)
     throw InputError(
         "The noise covariance is not positive definite: shrink it (noise.shrinkage above "
         "0), or give more samples.");

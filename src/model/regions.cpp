@@ -78,8 +78,8 @@ std::map<int, Gyrus> read_atlas_table(const std::filesystem::path& path) {
   std::map<int, Gyrus> gyri;
   for (std::size_t row = 0; row < table.rows.size(); ++row) {
     const std::string& full = table.rows[row][name];
-    Gyrus gyrus{cell_or_na(table, row, "abbreviation"), full, cell_or_na(table, row, "lobe"),
-                cell_or_na(table, row, "brodmann")};
+    Gyrus gyrus{cell_or_na(table, row, "abbreviation"), full,
+                fold_case(cell_or_na(table, row, "lobe")), cell_or_na(table, row, "brodmann")};
     if (gyrus.abbreviation == "n/a") gyrus.abbreviation = full;
     gyri.emplace(static_cast<int>(table.number(row, index)), gyrus);
   }
@@ -212,9 +212,11 @@ std::vector<Region> requested_regions(const PointLabels& labels,
   Labels known;
   for (const auto& gyrus : labels.gyri) known.insert(known.end(), {gyrus.abbreviation, gyrus.name});
   const Labels lobes = lobes_of(labels);
+  const Labels sides{side_name(Side::left), side_name(Side::right), side_name(Side::midline)};
   std::string problems;
   std::vector<Region> regions;
   for (const auto& request : requests) {
+    const std::size_t before = problems.size();
     for (const auto& gyrus : request.gyri)
       if (!find_label_any_case(known, gyrus))
         problems += fmt::format("Region '{}': no gyrus '{}'.{}\n", request.name, gyrus,
@@ -222,6 +224,10 @@ std::vector<Region> requested_regions(const PointLabels& labels,
     if (!request.lobe.empty() && !find_label_any_case(lobes, request.lobe))
       problems += fmt::format("Region '{}': no lobe '{}'; there are {}.\n", request.name,
                               request.lobe, join_labels(lobes));
+    if (!request.side.empty() && !find_label(sides, request.side))
+      problems += fmt::format("Region '{}': no side '{}'.{}\n", request.name, request.side,
+                              did_you_mean(request.side, sides));
+    const bool understood = problems.size() == before;
     Region region{request.name, {}, "", Side::midline};
     if (request.side == "left") region.side = Side::left;
     if (request.side == "right") region.side = Side::right;
@@ -233,7 +239,7 @@ std::vector<Region> requested_regions(const PointLabels& labels,
           (!request.lobe.empty() && fold_case(gyrus.lobe) == fold_case(request.lobe));
       return inside && (request.side.empty() || side_name(at) == request.side);
     });
-    if (region.points.empty() && problems.empty())
+    if (region.points.empty() && understood)
       problems += fmt::format("Region '{}' holds no source point.\n", request.name);
     regions.push_back(std::move(region));
   }

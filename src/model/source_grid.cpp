@@ -66,7 +66,8 @@ std::pair<Eigen::Index, double> nearest_point(const Eigen::Matrix3Xd& points,
 }  // namespace
 
 SourceGrid lattice_grid(double spacing_m, double scalp_radius_m) {
-  const double h = spacing_m / kMillimetre;
+  // Rounded to 1 pm, so that a point on a border of the rule does not move over it by rounding.
+  const double h = std::round(spacing_m * 1e12) / 1e9;
   if (!(h >= 4 - 1e-9 && h <= 12 + 1e-9))
     throw ExperimentError(fmt::format("The grid's spacing is {:g} mm: expected 4 to 12 mm.", h));
   SourceGrid grid;
@@ -106,6 +107,9 @@ SourceGrid lattice_grid(double spacing_m, double scalp_radius_m) {
 
 SourceGrid point_grid(const Labels& names, const Eigen::Matrix3Xd& points_m, PointSpace space,
                       double scalp_radius_m) {
+  if (static_cast<Eigen::Index>(names.size()) != points_m.cols())
+    throw InputError(fmt::format("{} names for {} source points: expected one each.", names.size(),
+                                 points_m.cols()));
   SourceGrid grid;
   grid.names = names;
   grid.mni_m = grid.head_m = points_m;
@@ -119,11 +123,14 @@ SourceGrid point_grid(const Labels& names, const Eigen::Matrix3Xd& points_m, Poi
       grid.head_m.col(p) = mni_to_head(points_m.col(p), scalp_radius_m);
     else
       grid.mni_m.col(p) = head_to_mni(points_m.col(p), scalp_radius_m);
-    const auto [other, distance] = nearest_point(points_m, points_m.col(p), p);
+  }
+  // Distances in MNI space whatever the points' own frame: the mapping between them stretches.
+  for (Eigen::Index p = 0; p < points_m.cols(); ++p) {
+    const auto [other, distance] = nearest_point(grid.mni_m, grid.mni_m.col(p), p);
     if (other >= 0 && distance < 1e-6)
       throw InputError(
-          fmt::format("Source points '{}' and '{}' lie on the same place: leave one out.", name,
-                      names[static_cast<std::size_t>(other)]));
+          fmt::format("Source points '{}' and '{}' lie on the same place: leave one out.",
+                      names[static_cast<std::size_t>(p)], names[static_cast<std::size_t>(other)]));
     if (other >= 0) nearest.push_back(distance);
   }
   if (!nearest.empty()) {

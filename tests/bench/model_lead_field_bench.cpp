@@ -2,6 +2,7 @@
 // The lead field of one participant - 64 electrodes, the 6 mm lattice, default shells, 1e-9 - by
 // the fast kernel and by its plain twin, in one run on one core, so that their ratio means
 // something.
+#include "quiet_memory.hpp"
 #include "reference/lead_field.hpp"
 
 #include <headwater/model/head.hpp>

@@ -20,8 +20,9 @@ SourceEstimate estimate_sources(const SourceOperator& inverse, const Eigen::Matr
 /// The map of a window: root mean square over its samples of the amplitude, N.
 Eigen::VectorXd window_map(const Eigen::MatrixXd& amplitude, const SampleRange& samples);
 
-/// trace of the resolution matrix R = T L (3N by 3N, never formed): at most M-1 for a linear
-/// estimate.
+/// trace of the resolution matrix R = T L (3N by 3N, never formed): at most M-1 for minimum norm
+/// and eLORETA. Standardised estimates and unit-gain filters (3N for vectors) are not bounded by
+/// it.
 double resolution_trace(const SourceOperator& inverse, const Eigen::MatrixXd& gain);
 
 }  // namespace headwater

@@ -8,7 +8,9 @@
 // covers the noise of the contrast alone (not the head model, nor the method's own bias towards a
 // place): noise of the contrast's covariance is drawn, held constant through the window (the widest
 // case), added to the data, and the 2.5 and 97.5 percentiles are taken of the index about its mean
-// over draws.
+// over draws. The power of the noise itself draws an index towards that of the noise; the distance
+// between the mean over draws and the value estimates by how much, and the interval is longer by it
+// on the other side.
 #pragma once
 #include <headwater/inverse/region_courses.hpp>
 

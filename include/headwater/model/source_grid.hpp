@@ -27,7 +27,7 @@ struct SourceGrid {
   Labels names;              ///< of the user's points; empty for a lattice
   Eigen::Matrix3Xd mni_m;    ///< 3 by N
   Eigen::Matrix3Xd head_m;   ///< 3 by N, after mni_to_head (or as given in the head frame)
-  double spacing_m = 0;      ///< of the lattice; of the user's points the median nearest distance
+  double spacing_m = 0;      ///< of the lattice; of the user's points the median nearest (MNI)
   Eigen::Matrix3Xi lattice;  ///< 3 by N, mni = spacing * lattice; empty for the user's points
   /// Point that is this one's image in x; itself on the midline, -1 where the user's points have
   /// none within 1 mm. An involution.

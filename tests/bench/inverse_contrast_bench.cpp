@@ -1,0 +1,111 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// One contrast of one participant - 64 leads, 7 mm lattice, 180 samples - through minimum norm,
+// sLORETA, LCMV, region courses and indices, beside the matrix products that none of it can do
+// without: two gram matrices, three products of a square matrix with the lead field, three of an
+// operator with the data. Counter times_bare: all over bare, measured in turns.
+#include "quiet_memory.hpp"
+
+#include <headwater/base/random.hpp>
+#include <headwater/inverse/indices.hpp>
+#include <headwater/inverse/lcmv.hpp>
+#include <headwater/inverse/minimum_norm.hpp>
+#include <headwater/inverse/region_courses.hpp>
+#include <headwater/inverse/regularisation.hpp>
+#include <headwater/inverse/sloreta.hpp>
+#include <headwater/model/lead_field.hpp>
+#include <headwater/model/regions.hpp>
+#include <headwater/signal/electrodes.hpp>
+#include <headwater/signal/standard_cap.hpp>
+
+#include <benchmark/benchmark.h>
+
+#include <chrono>
+
+namespace headwater {
+namespace {
+
+using Eigen::MatrixXd;
+
+constexpr double kNoiseScale = 0.01;
+const SampleRange kWindow{100, 40};
+
+struct ContrastCase {
+  SourceGrid grid = lattice_grid(7e-3, 0.092);
+  Eigen::Matrix3Xd outward = grid.head_m.colwise().normalized();
+  std::vector<Region> lobes = lobe_regions(template_labels(grid));
+  Subspace subspace;
+  MatrixXd data, data_covariance;
+  ContrastCase() {
+    Labels names;
+    for (std::size_t i = 0; names.size() < 64; i += standard_names().size() / 64)
+      names.push_back(standard_names()[i]);
+    const MatrixXd gain =
+        compute_gain(default_head(), standard_montage(names, 0.092).positions, grid.head_m);
+    subspace = make_subspace(names, gain, 1e-10 * MatrixXd::Identity(63, 63));
+    RandomStream random(1, "bench");
+    data = 1e-6 * random.normal_matrix(64, 180) +
+           gain.middleCols<3>(3000) * (2e-8 * random.normal_matrix(3, 180));
+    const MatrixXd y = subspace.basis.transpose() * data;
+    data_covariance = y * y.transpose() / 180.0;
+  }
+};
+
+void follow(const ContrastCase& c, const SourceOperator& inverse) {
+  const SourceEstimate estimate = estimate_sources(inverse, c.data);
+  const RegionCourses courses = region_courses(inverse, estimate, c.data, c.lobes, c.outward);
+  const auto indices =
+      PowerIndices(inverse, c.subspace.basis, kNoiseScale * c.subspace.noise_V2, c.lobes, {})
+          .at(c.data, kWindow);
+  benchmark::DoNotOptimize(courses.projected.data());
+  benchmark::DoNotOptimize(indices.data());
+}
+
+template <typename Ridge>
+void follow_ridge(const ContrastCase& c, const Ridge& inverse) {
+  const MatrixXd z = spectrum_map(c.subspace, inverse.spectrum()) *
+                     c.data.middleCols(kWindow.first, kWindow.count) / std::sqrt(kNoiseScale);
+  const double lambda = choose_regularisation(inverse.spectrum().values / kNoiseScale, z, {}).used;
+  follow(c, inverse.at(lambda, kNoiseScale));
+}
+
+void whole(const ContrastCase& c) {
+  follow_ridge(c, MinimumNorm(c.subspace, 0.8));
+  follow_ridge(c, Sloreta(c.subspace));
+  follow(c, Lcmv(c.subspace, c.data_covariance, c.outward, c.grid.mirror, {}).at(kNoiseScale));
+}
+
+void bare(const ContrastCase& c) {
+  const MatrixXd &k = c.subspace.whitened_gain, &square = c.subspace.whitener;
+  const MatrixXd z = c.subspace.basis.transpose() * c.data;
+  MatrixXd gram = MatrixXd::Zero(k.rows(), k.rows()), turned, sources;
+  for (int twice = 0; twice < 2; ++twice) gram.selfadjointView<Eigen::Lower>().rankUpdate(k);
+  for (int thrice = 0; thrice < 3; ++thrice) {
+    turned.noalias() = square * k;
+    sources.noalias() = turned.transpose() * z;
+    benchmark::DoNotOptimize(sources.data());
+  }
+  benchmark::DoNotOptimize(gram.data());
+}
+
+void contrast(benchmark::State& state) {
+  static const ContrastCase input;
+  using Clock = std::chrono::steady_clock;
+  std::chrono::duration<double> all{0}, least{0};
+  for (auto _ : state) {
+    const auto start = Clock::now();
+    bare(input);
+    const auto middle = Clock::now();
+    whole(input);
+    const auto end = Clock::now();
+    least += middle - start;
+    all += end - middle;
+    state.SetIterationTime(std::chrono::duration<double>(end - middle).count());
+  }
+  state.counters["times_bare"] = all.count() / least.count();
+  state.counters["bare_ms"] = 1e3 * least.count() / static_cast<double>(state.iterations());
+}
+
+BENCHMARK(contrast)->UseManualTime()->Unit(benchmark::kMillisecond);
+
+}  // namespace
+}  // namespace headwater
