@@ -58,18 +58,16 @@ void add_marks(SourcePicture& picture, const fs::path& peaks_file, const std::st
     PictureMark mark;
     mark.mni_mm = places.col(static_cast<Eigen::Index>(row));
     mark.pair = pair;
-    mark.label = fmt::format("{}", pair ? (mark.mni_mm.x() < 0 ? 'L' : 'R') : 'P');
-    const std::string strength = cell(row, "unit") == "n/a"
-                                     ? cell(row, "value")
-                                     : fmt::format("{} {}", cell(row, "value"), cell(row, "unit"));
-    mark.caption = fmt::format("{}  {} {} {}  ({:.0f}, {:.0f}, {:.0f}) mm  {}", mark.label,
-                               pair ? "pair," : "peak,", cell(row, "side"), cell(row, "gyrus"),
-                               mark.mni_mm.x(), mark.mni_mm.y(), mark.mni_mm.z(), strength);
+    mark.label = fmt::format("{}", pair ? (mark.mni_mm.x() < 0 ? 'L' : 'R') : 'M');
+    const std::string unit = cell(row, "unit") == "n/a" ? "" : " " + cell(row, "unit");
+    mark.caption = fmt::format("{}  {} {} {} ({:.0f}, {:.0f}, {:.0f}) mm, {:.3g}{}", mark.label,
+                               pair ? "pair," : "maximum,", cell(row, "side"), cell(row, "gyrus"),
+                               mark.mni_mm.x(), mark.mni_mm.y(), mark.mni_mm.z(),
+                               peaks.number(row, peaks.column("value")), unit);
     if (!pair) {
-      mark.caption +=
-          fmt::format("  {} ms, depth {} mm", cell(row, "latency_ms"), cell(row, "depth_mm"));
-      false_peak = cell(row, "note") != "n/a";
-      if (false_peak) mark.caption += "  likely false";
+      false_peak = cell(row, "note").rfind("likely false", 0) == 0;
+      mark.caption += fmt::format(", {:.0f} ms{}", peaks.number(row, peaks.column("latency_ms")),
+                                  false_peak ? ", likely false" : "");
       peak_marked = true;
     }
     picture.marks.push_back(mark);
@@ -77,7 +75,7 @@ void add_marks(SourcePicture& picture, const fs::path& peaks_file, const std::st
   if (false_peak)
     picture.notes.push_back(
         "A mirrored pair of dipoles explains the scalp map better than any one point: the "
-        "map's maximum P is likely two symmetric generators merged.");
+        "map's maximum M is likely two symmetric generators merged.");
 }
 
 void add_scalp(SourcePicture& picture, const fs::path& waveform_file,
