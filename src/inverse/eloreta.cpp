@@ -81,6 +81,9 @@ SourceOperator Eloreta::at(double lambda, double noise_scale) {
   iterate(alpha, options_.tolerance);
   Eigen::MatrixXd gram(gain_.rows(), gain_.rows());
   gram.noalias() = weighted_ * gain_.transpose();
+  // The spectrum of the weights in use, so that a fit taken from it is that of this operator.
+  const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(gram);
+  spectrum_ = {solver.eigenvalues().cwiseMax(0), solver.eigenvectors()};
   gram.diagonal().array() += alpha;
   const Eigen::LLT<Eigen::MatrixXd> factor(gram);
   SourceOperator result;

@@ -21,7 +21,7 @@ struct EloretaOptions {
 class Eloreta {
  public:
   explicit Eloreta(const Subspace& subspace, const EloretaOptions& options = {});
-  /// Of K W^-1 K', W = (M-1)/3N I until adapt() has been called.
+  /// Of K W^-1 K': W = (M-1)/3N I, then the weights of the last adapt() or at().
   const GramSpectrum& spectrum() const { return spectrum_; }
   /// Adapts the spectrum to lambda: weights iterated from I to a change below 1 %.
   void adapt(double lambda, double noise_scale);
