@@ -5,6 +5,7 @@
 #include <headwater/base/units.hpp>
 #include <headwater/base/version.hpp>
 
+#include <algorithm>
 #include <cmath>
 
 namespace headwater {
@@ -52,6 +53,13 @@ Json fit_json(const ParticipantData& participant, const ContrastWaveform& contra
     windows.set(window.window.name, part);
   }
   json.set("Windows", windows);
+  const bool follows_noise =
+      std::any_of(located.windows.begin(), located.windows.end(),
+                  [](const LocatedWindow& window) { return window.fit.residual_noise < 0.5; });
+  if (follows_noise)
+    json.set("Note",
+             "The residual is far below the noise: the estimate follows part of the noise. Compare "
+             "inverse.regularisation = { snr = 3 }, or the discrepancy among the choices above.");
   json.set("Caution", caution());
   return json;
 }
