@@ -110,6 +110,13 @@ class Assembly {
     } else {
       find_participants();
     }
+    for (const auto& name : out_.participants)
+      if (name == "mean" || name.empty() || name.find('/') != std::string::npos)
+        keys_.problem(
+            keys_.find("participants.table"),
+            fmt::format("'{}' cannot name a participant: it would not make a folder of its "
+                        "own ('mean' is the mean over participants).",
+                        name));
     for (const auto& name : keys_.texts("participants.leave_out")) {
       const auto found = std::find(out_.participants.begin(), out_.participants.end(), name);
       if (found == out_.participants.end())

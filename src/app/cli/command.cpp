@@ -10,11 +10,16 @@ namespace headwater::cli {
 
 void add_experiment_options(CLI::App& command, ExperimentOptions& options) {
   command.add_option("FILE", options.file, "Experiment file (see `headwater keys`)")->required();
-  command.add_option("--participant", options.participants,
-                     "Only these participants; 'mean' is one");
-  command.add_option("--contrast", options.contrasts, "Only these contrasts");
-  command.add_option("--method", options.methods,
-                     "Only these methods: minimum-norm, sloreta, eloreta, lcmv");
+  command
+      .add_option("--participant", options.participants,
+                  "Only this participant; 'mean' is one; may be repeated")
+      ->allow_extra_args(false);
+  command.add_option("--contrast", options.contrasts, "Only this contrast; may be repeated")
+      ->allow_extra_args(false);
+  command
+      .add_option("--method", options.methods,
+                  "Only this method: minimum-norm, sloreta, eloreta or lcmv; may be repeated")
+      ->allow_extra_args(false);
   command.add_option("--output", options.output,
                      "Results folder, in place of the experiment file's");
   command

@@ -73,9 +73,11 @@ void add_leadfield(CLI::App& program, Outcome&) {
   command
       ->add_option("--radii-mm", options->radii_mm, "Radii of the shells, from inside to outside")
       ->delimiter(',')
+      ->allow_extra_args(false)
       ->required();
   command->add_option("--conductivity-S-per-m", options->conductivity, "Conductivity of each shell")
       ->delimiter(',')
+      ->allow_extra_args(false)
       ->required();
   command
       ->add_option("--reference", options->reference,
