@@ -78,11 +78,13 @@ std::vector<ColumnInfo> with_place_columns(std::vector<ColumnInfo> before,
   return before;
 }
 
-std::string pair_note(const DipoleVerdict& verdict) {
-  return fmt::format(
-      "one mirrored pair leaves {} % of the window's mean map unexplained, the best single "
-      "point {} %",
+std::string pair_note(const ForwardModel& forward, const DipoleVerdict& verdict) {
+  const std::string note = fmt::format(
+      "one mirrored pair leaves {} % of the window's mean map unexplained, the best single point "
+      "{} %",
       percent(verdict.pair.unexplained), percent(verdict.one.unexplained));
+  if (!may_be_merged(forward.grid, verdict.pair.point)) return note;
+  return note + "; it lies deep and may itself stand for extended or further sources";
 }
 
 std::vector<RankedRegion> ranked_regions(const ForwardModel& forward,

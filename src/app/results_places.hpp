@@ -41,8 +41,9 @@ std::vector<RankedRegion> ranked_regions(const ForwardModel& forward,
 /// The three strongest near the surface; a deep region is named where it is larger still.
 std::string strongest_regions(const ForwardModel& forward, const std::vector<RankedRegion>& ranked);
 
-/// How much better a mirrored pair explains the window's mean map.
-std::string pair_note(const DipoleVerdict& verdict);
+/// How much better a mirrored pair explains the window's mean map, and whether it is too deep to be
+/// taken at its word.
+std::string pair_note(const ForwardModel& forward, const DipoleVerdict& verdict);
 /// What to know about a peak, or "".
 std::string peak_note(const ForwardModel& forward, const DipoleVerdict& verdict,
                       const SourceOperator& inverse, Eigen::Index point);

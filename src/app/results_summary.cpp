@@ -84,7 +84,7 @@ std::vector<SummaryRow> summarise(const ParticipantData& participant,
     };
     if (verdict.pair_preferred)
       add("mirrored pair", verdict.pair.point, verdict.pair.moment_Am.norm() / kNanoampereMetre,
-          "nA m", std::nan(""), pair_note(verdict));
+          "nA m", std::nan(""), pair_note(forward, verdict));
     if (!window.peaks.empty()) {
       const Peak& peak = window.peaks[0];
       add("peak", peak.point, peak.value / located.inverse.unit_in_SI, located.inverse.unit,

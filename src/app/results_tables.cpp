@@ -122,7 +122,7 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
         Row row{window.window.name, "mirrored pair", "1"};
         append_place(row, forward, point);
         append(row, {format_number(moment.norm() / kNanoampereMetre, 5), "nA m", "n/a",
-                     pair_note(verdict)});
+                     pair_note(forward, verdict)});
         table.rows.push_back(row);
       };
       add(verdict.pair.partner, verdict.pair.partner_moment_Am);
