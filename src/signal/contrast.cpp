@@ -143,8 +143,9 @@ ContrastWaveform form_contrast(const std::string& name, const std::vector<Condit
   std::vector<std::string> problems;
   for (const auto& [condition, weight] : merged) {
     if (weight == 0) continue;
-    const auto average = std::find_if(averages.begin(), averages.end(),
-                                      [&](const Average& a) { return a.condition == condition; });
+    const auto average =
+        std::find_if(averages.begin(), averages.end(),
+                     [&name = condition](const Average& a) { return a.condition == name; });
     if (average == averages.end()) {
       problems.push_back(fmt::format("there is no average of condition '{}'.", condition));
     } else if (average->channels != first.channels || average->data_V.cols() != sum.cols()) {

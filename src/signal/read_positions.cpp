@@ -2,6 +2,7 @@
 // Tables of electrode positions: our own with the unit in the column names, or those of BIDS
 // (electrodes.tsv), whose unit stands in the coordsystem.json beside them.
 #include <headwater/base/error.hpp>
+#include <headwater/base/head_frame.hpp>
 #include <headwater/base/json.hpp>
 #include <headwater/base/table.hpp>
 #include <headwater/base/units.hpp>
@@ -16,10 +17,6 @@ namespace headwater {
 namespace {
 
 namespace fs = std::filesystem;
-
-// Origin of the head frame in MNI space; the model wing, which this wing may not see, has it as
-// kHeadCentreMni (a test holds the two together).
-const Eigen::Vector3d kCentreMni_m{0, -15.4e-3, -2.8e-3};
 
 struct LengthUnit {
   std::string_view name;
@@ -38,7 +35,7 @@ fs::path coordinate_file(const fs::path& table) {
   std::string name = table.filename().string();
   if (const auto at = name.rfind(ending); at != std::string::npos) {
     name.replace(at, ending.size(), "coordsystem.json");
-    if (const fs::path beside = table.parent_path() / name; fs::exists(beside)) return beside;
+    if (fs::path beside = table.parent_path() / name; fs::exists(beside)) return beside;
   }
   const fs::path plain = table.parent_path() / "coordsystem.json";
   return fs::exists(plain) ? plain : fs::path();
@@ -128,7 +125,7 @@ Montage read_positions(const fs::path& path, PositionSpace space) {
                  : std::array{table.column("x"), table.column("y"), table.column("z")});
   check_unit(montage.positions, unit, table.source);
   montage.positions *= unit.metres;
-  if (space == PositionSpace::mni) montage.positions.colwise() -= kCentreMni_m;
+  if (space == PositionSpace::mni) montage.positions.colwise() -= kHeadCentreMni;
   return montage;
 }
 

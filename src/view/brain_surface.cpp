@@ -151,8 +151,9 @@ Eigen::VectorXd painted_values(const SurfaceMesh& surface, const Eigen::Matrix3X
     const Eigen::Vector3d vertex = surface.vertices_mm.col(v);
     const Eigen::Vector3d way = (kCentre_mm - vertex).normalized() * kShownDepth_mm;
     const auto candidates = mean.near_segment(vertex, way);
-    for (double depth = 0; depth <= kShownDepth_mm; depth += kDepthStep_mm)
-      painted(v) = std::max(painted(v), mean.at(vertex + depth / kShownDepth_mm * way, candidates));
+    for (int step = 0; step * kDepthStep_mm <= kShownDepth_mm; ++step)
+      painted(v) = std::max(
+          painted(v), mean.at(vertex + step * kDepthStep_mm / kShownDepth_mm * way, candidates));
   });
   return painted;
 }
