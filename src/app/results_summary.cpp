@@ -5,6 +5,8 @@
 #include <headwater/base/units.hpp>
 #include <headwater/base/version.hpp>
 
+#include <Eigen/Eigenvalues>
+
 #include <algorithm>
 #include <cmath>
 
@@ -28,6 +30,15 @@ Json fit_json(const ParticipantData& participant, const ContrastWaveform& contra
         .set("IndependentSamples", noise.independent_samples);
     json.set("NoiseCovariance", part);
   }
+  const Eigen::VectorXd variances =
+      Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd>(contrast.noise_V2, Eigen::EigenvaluesOnly)
+          .eigenvalues();
+  const double largest = variances[variances.size() - 1];
+  Json contrast_noise = Json::object();
+  contrast_noise.set("Rank", (variances.array() > 1e-10 * largest).count())
+      .set("Condition", largest / variances[0])
+      .set("RootMeanSquare_uV", std::sqrt(variances.mean()) / kMicrovolt);
+  json.set("ContrastNoise", contrast_noise);
   const auto& choice = located.regularisation;
   Json regularisation = Json::object();
   regularisation.set("Rule", choice.rule)
