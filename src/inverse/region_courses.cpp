@@ -1,7 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// X = A Z with A (3K by r) the region's rows of the operator and Z = map d. With Z Z' = E E'
-// (eigen- decomposition, E r by q, q the rank) the left singular vectors of X are those of A E, so
-// that the eigenproblem is q by q, whatever the numbers of points and samples.
+// X = A Z with A (3K by r) the region's rows of the operator and Z = map d. With Z Z' = E E' (E r
+// by q, q the rank) the left singular vectors of X are A E v, v the eigenvectors of E'(A'A)E:
+// whatever the numbers of points and samples, the eigenproblem is q by q, and only its largest pair
+// is needed.
+#include <headwater/base/eigenproblem.hpp>
 #include <headwater/inverse/region_courses.hpp>
 
 #include <Eigen/Eigenvalues>
@@ -26,16 +28,20 @@ struct Pattern {
   double share = 0;
 };
 
-Pattern dominant_pattern(const Eigen::MatrixXd& block, const Eigen::Matrix3Xd& outward) {
-  // Data of zeros have rank 0, which the eigensolver does not take.
-  if (block.cols() == 0) return {Eigen::VectorXd::Zero(block.rows()), 0};
-  const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(block.transpose() * block);
-  const Eigen::Index last = solver.eigenvalues().size() - 1;
-  Pattern pattern;
-  const double total = solver.eigenvalues().sum();
-  if (!(total > 0)) return {Eigen::VectorXd::Zero(block.rows()), 0};
-  pattern.share = solver.eigenvalues()[last] / total;
-  Eigen::VectorXd u = block * solver.eigenvectors().col(last);
+/// kernel: r by 3K, the region's columns of the operator's (A'); root: E.
+Pattern dominant_pattern(const Eigen::MatrixXd& kernel, const Eigen::MatrixXd& root,
+                         const Eigen::Matrix3Xd& outward) {
+  Pattern pattern{Eigen::VectorXd::Zero(kernel.cols()), 0};
+  if (root.cols() == 0) return pattern;  // data of zeros
+  Eigen::MatrixXd gram = Eigen::MatrixXd::Zero(kernel.rows(), kernel.rows());
+  gram.selfadjointView<Eigen::Lower>().rankUpdate(kernel);
+  const Eigen::MatrixXd small =
+      root.transpose() * (gram.selfadjointView<Eigen::Lower>() * root).eval();
+  const double total = small.trace();
+  if (!(total > 0)) return pattern;
+  const Eigenpair largest = largest_eigenpair((small + small.transpose()) / 2);
+  pattern.share = largest.value / total;
+  Eigen::VectorXd u = kernel.transpose() * (root * largest.vector);
   double outwards = 0;
   for (Eigen::Index k = 0; k < outward.cols(); ++k)
     outwards += u.segment<3>(3 * k).dot(outward.col(k));
@@ -68,7 +74,7 @@ RegionCourses region_courses(const SourceOperator& inverse, const SourceEstimate
       kernel.middleCols<3>(3 * k) = inverse.kernel.middleCols<3>(3 * p);
       normals.col(k) = outward.col(p);
     }
-    const Pattern pattern = dominant_pattern(kernel.transpose() * root, normals);
+    const Pattern pattern = dominant_pattern(kernel, root, normals);
     courses.share[r] = pattern.share;
     // The projected course is linear in the data: one row of weights for the region.
     const Eigen::RowVectorXd weights =

@@ -1,0 +1,30 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/eigenproblem.hpp>
+
+#include <Eigen/Eigenvalues>
+#include <Spectra/MatOp/DenseSymMatProd.h>
+#include <Spectra/SymEigsSolver.h>
+
+namespace headwater {
+namespace {
+
+constexpr Eigen::Index kWholeBelow = 24;  // smaller ones are as fast solved whole
+constexpr Eigen::Index kLanczosVectors = 12;
+constexpr double kTolerance = 1e-10;
+
+}  // namespace
+
+Eigenpair largest_eigenpair(const Eigen::MatrixXd& symmetric) {
+  if (symmetric.rows() >= kWholeBelow && symmetric.cwiseAbs().maxCoeff() > 0) {
+    Spectra::DenseSymMatProd<double> product(symmetric);
+    Spectra::SymEigsSolver<Spectra::DenseSymMatProd<double>> solver(product, 1, kLanczosVectors);
+    solver.init();
+    if (solver.compute(Spectra::SortRule::LargestAlge, 200, kTolerance) == 1)
+      return {solver.eigenvalues()[0], solver.eigenvectors().col(0)};
+  }
+  const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(symmetric);
+  const Eigen::Index last = symmetric.rows() - 1;
+  return {solver.eigenvalues()[last], solver.eigenvectors().col(last)};
+}
+
+}  // namespace headwater
