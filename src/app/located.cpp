@@ -142,10 +142,13 @@ LocatedContrast Locator::locate(std::size_t place, const std::string& method,
   const auto spectrum = engine.estimate(*experiment_, *participant_, method,
                                         window_samples(contrast, windows), scale, located);
   located.estimate = estimate_sources(located.inverse, contrast.data_V);
-  located.courses = region_courses(located.inverse, located.estimate, contrast.data_V,
-                                   forward.regions, forward.outward);
+  const auto lobe_forms = region_forms(located.inverse, forward.lobes);
+  const bool own_regions = !experiment_->regions.empty();
+  located.courses = region_courses(
+      located.inverse, own_regions ? region_forms(located.inverse, forward.regions) : lobe_forms,
+      contrast.data_V, forward.regions, forward.outward);
   const PowerIndices indices(
-      located.inverse, engine.subspace.basis, contrast.noise_V2, forward.lobes,
+      located.inverse, lobe_forms, engine.subspace.basis, contrast.noise_V2, forward.lobes,
       {400, experiment_->seed, participant_->name + " " + contrast.name + " " + method});
   for (const auto& window : windows) {
     LocatedWindow part{window, samples_in(contrast.times_s, window), {}, {}, {}, {}};

@@ -92,23 +92,17 @@ std::vector<Comparison> comparisons(
 
 }  // namespace
 
-PowerIndices::PowerIndices(const SourceOperator& inverse, const Eigen::MatrixXd& basis,
-                           const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
-                           const IndexOptions& options)
+PowerIndices::PowerIndices(const SourceOperator& inverse, const std::vector<Eigen::MatrixXd>& forms,
+                           const Eigen::MatrixXd& basis, const Eigen::MatrixXd& noise_V2,
+                           const std::vector<Region>& lobes, const IndexOptions& options)
     : map_(inverse.map) {
   if (options.draws < 2) throw std::logic_error("PowerIndices: an interval needs at least 2 draws");
-  const Eigen::Index dimension = map_.rows();
-  for (const auto& region : lobes) {
+  if (forms.size() != lobes.size()) throw std::logic_error("PowerIndices: a form for each lobe");
+  for (std::size_t k = 0; k < lobes.size(); ++k) {
+    const auto& region = lobes[k];
     if (region.lobe.empty() || region.side == Side::midline || region.points.empty()) continue;
-    Form form{region.lobe, region.side, static_cast<double>(region.points.size()),
-              Eigen::MatrixXd::Zero(dimension, dimension)};
-    Eigen::MatrixXd kernel(dimension, static_cast<Eigen::Index>(3 * region.points.size()));
-    for (std::size_t k = 0; k < region.points.size(); ++k)
-      kernel.middleCols<3>(static_cast<Eigen::Index>(3 * k)) =
-          inverse.kernel.middleCols<3>(3 * region.points[k]);
-    form.matrix.selfadjointView<Eigen::Lower>().rankUpdate(kernel, 1 / form.points);
-    form.matrix.triangularView<Eigen::StrictlyUpper>() = form.matrix.transpose();
-    forms_.push_back(std::move(form));
+    const auto points = static_cast<double>(region.points.size());
+    forms_.push_back({region.lobe, region.side, points, forms[k] / points});
   }
   const Eigen::MatrixXd root = noise_V2.llt().matrixL();
   RandomStream random(options.seed, "indices " + options.stream);

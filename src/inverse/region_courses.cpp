@@ -28,15 +28,12 @@ struct Pattern {
   double share = 0;
 };
 
-/// kernel: r by 3K, the region's columns of the operator's (A'); root: E.
-Pattern dominant_pattern(const Eigen::MatrixXd& kernel, const Eigen::MatrixXd& root,
-                         const Eigen::Matrix3Xd& outward) {
+/// kernel: M-1 by 3K, the region's columns of the operator's; form: kernel kernel'; root: E.
+Pattern dominant_pattern(const Eigen::MatrixXd& kernel, const Eigen::MatrixXd& form,
+                         const Eigen::MatrixXd& root, const Eigen::Matrix3Xd& outward) {
   Pattern pattern{Eigen::VectorXd::Zero(kernel.cols()), 0};
   if (root.cols() == 0) return pattern;  // data of zeros
-  Eigen::MatrixXd gram = Eigen::MatrixXd::Zero(kernel.rows(), kernel.rows());
-  gram.selfadjointView<Eigen::Lower>().rankUpdate(kernel);
-  const Eigen::MatrixXd small =
-      root.transpose() * (gram.selfadjointView<Eigen::Lower>() * root).eval();
+  const Eigen::MatrixXd small = root.transpose() * (form * root);
   const double total = small.trace();
   if (!(total > 0)) return pattern;
   const Eigenpair largest = largest_eigenpair((small + small.transpose()) / 2);
@@ -54,38 +51,53 @@ Pattern dominant_pattern(const Eigen::MatrixXd& kernel, const Eigen::MatrixXd& r
   return pattern;
 }
 
+/// The region's columns of the operator's kernel, side by side.
+Eigen::MatrixXd region_kernel(const SourceOperator& inverse, const Region& region) {
+  Eigen::MatrixXd kernel(inverse.kernel.rows(),
+                         static_cast<Eigen::Index>(3 * region.points.size()));
+  for (std::size_t k = 0; k < region.points.size(); ++k)
+    kernel.middleCols<3>(static_cast<Eigen::Index>(3 * k)) =
+        inverse.kernel.middleCols<3>(3 * region.points[k]);
+  return kernel;
+}
+
 }  // namespace
 
-RegionCourses region_courses(const SourceOperator& inverse, const SourceEstimate& estimate,
+std::vector<Eigen::MatrixXd> region_forms(const SourceOperator& inverse,
+                                          const std::vector<Region>& regions) {
+  const Eigen::Index dimension = inverse.kernel.rows();
+  std::vector<Eigen::MatrixXd> forms;
+  for (const auto& region : regions) {
+    Eigen::MatrixXd form = Eigen::MatrixXd::Zero(dimension, dimension);
+    form.selfadjointView<Eigen::Lower>().rankUpdate(region_kernel(inverse, region));
+    form.triangularView<Eigen::StrictlyUpper>() = form.transpose();
+    forms.push_back(std::move(form));
+  }
+  return forms;
+}
+
+RegionCourses region_courses(const SourceOperator& inverse,
+                             const std::vector<Eigen::MatrixXd>& forms,
                              const Eigen::MatrixXd& data_V, const std::vector<Region>& regions,
                              const Eigen::Matrix3Xd& outward) {
   const auto count = static_cast<Eigen::Index>(regions.size());
-  const Eigen::Index samples = data_V.cols();
-  RegionCourses courses{Eigen::MatrixXd::Zero(count, samples),
-                        Eigen::MatrixXd::Zero(count, samples), Eigen::VectorXd::Zero(count)};
-  const Eigen::MatrixXd root = root_of_gram(inverse.map * data_V);
+  const Eigen::MatrixXd z = inverse.map * data_V;
+  const Eigen::MatrixXd root = root_of_gram(z);
+  RegionCourses courses{Eigen::MatrixXd::Zero(count, z.cols()),
+                        Eigen::MatrixXd::Zero(count, z.cols()), Eigen::VectorXd::Zero(count)};
   for (Eigen::Index r = 0; r < count; ++r) {
-    const auto& points = regions[static_cast<std::size_t>(r)].points;
-    const auto size = static_cast<Eigen::Index>(points.size());
-    Eigen::MatrixXd kernel(inverse.kernel.rows(), 3 * size);
-    Eigen::Matrix3Xd normals(3, size);
-    for (Eigen::Index k = 0; k < size; ++k) {
-      const Eigen::Index p = points[static_cast<std::size_t>(k)];
-      kernel.middleCols<3>(3 * k) = inverse.kernel.middleCols<3>(3 * p);
-      normals.col(k) = outward.col(p);
-    }
-    const Pattern pattern = dominant_pattern(kernel, root, normals);
+    const auto& region = regions[static_cast<std::size_t>(r)];
+    const auto& form = forms[static_cast<std::size_t>(r)];
+    const auto size = static_cast<double>(region.points.size());
+    const Eigen::MatrixXd kernel = region_kernel(inverse, region);
+    const Eigen::Matrix3Xd normals = outward(Eigen::all, region.points);
+    const Pattern pattern = dominant_pattern(kernel, form, root, normals);
     courses.share[r] = pattern.share;
     // The projected course is linear in the data: one row of weights for the region.
-    const Eigen::RowVectorXd weights =
-        (kernel * pattern.direction).transpose() / static_cast<double>(size);
-    courses.projected.row(r) = weights * (inverse.map * data_V);
-    for (Eigen::Index t = 0; t < samples; ++t) {
-      double power = 0;
-      for (const Eigen::Index p : points)
-        power += estimate.amplitude(p, t) * estimate.amplitude(p, t);
-      courses.rms(r, t) = std::sqrt(power / static_cast<double>(size));
-    }
+    courses.projected.row(r) = (kernel * pattern.direction).transpose() / size * z;
+    // Rounding may leave a power of nothing below zero.
+    courses.rms.row(r) =
+        ((z.array() * (form * z).array()).colwise().sum() / size).cwiseMax(0).sqrt();
   }
   return courses;
 }

@@ -72,7 +72,7 @@ TEST(InverseFault, RegionCoursesOfNothing) {
   Region region;
   region.points = {1, 2, 3};
   const RegionCourses courses =
-      region_courses(inverse, estimate_sources(inverse, zeros), zeros, {region}, c.outward);
+      region_courses(inverse, region_forms(inverse, {region}), zeros, {region}, c.outward);
   EXPECT_EQ(courses.projected, MatrixXd::Zero(1, 5));
   EXPECT_EQ(courses.rms, MatrixXd::Zero(1, 5));
   EXPECT_EQ(courses.share[0], 0);

@@ -34,8 +34,8 @@ struct IndexCase {
     IndexOptions options;
     options.draws = draws;
     options.stream = "test";
-    return PowerIndices(inverse, c.subspace.basis, kNoiseScale * c.subspace.noise_V2, lobes,
-                        options)
+    return PowerIndices(inverse, region_forms(inverse, lobes), c.subspace.basis,
+                        kNoiseScale * c.subspace.noise_V2, lobes, options)
         .at(data, kWindow);
   }
 };

@@ -24,7 +24,7 @@ SourceOperator pass_through(Eigen::Index points) {
 
 RegionCourses courses_of(const SourceOperator& inverse, const MatrixXd& data,
                          const std::vector<Region>& regions, const Eigen::Matrix3Xd& outward) {
-  return region_courses(inverse, estimate_sources(inverse, data), data, regions, outward);
+  return region_courses(inverse, region_forms(inverse, regions), data, regions, outward);
 }
 
 Region all_points(Eigen::Index count) {
@@ -80,7 +80,8 @@ TEST(RegionCourses, PatternIsTheFirstSingularVector) {
   ASSERT_GE(regions.size(), 8u);
   for (const auto& inverse : operators) {
     const SourceEstimate estimate = estimate_sources(inverse, data);
-    const RegionCourses courses = region_courses(inverse, estimate, data, regions, c.outward);
+    const RegionCourses courses =
+        region_courses(inverse, region_forms(inverse, regions), data, regions, c.outward);
     for (std::size_t r = 0; r < regions.size(); ++r) {
       const auto size = static_cast<Eigen::Index>(regions[r].points.size());
       MatrixXd x(3 * size, 60);

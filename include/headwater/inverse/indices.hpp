@@ -38,12 +38,12 @@ struct IndexOptions {
 /// windows.
 class PowerIndices {
  public:
-  /// noise_V2: covariance of the contrast in the subspace (M-1 by M-1, basis B of M by M-1).
-  /// Regions without side or lobe are ignored; indices whose two regions hold no point are left
-  /// out.
-  PowerIndices(const SourceOperator& inverse, const Eigen::MatrixXd& basis,
-               const Eigen::MatrixXd& noise_V2, const std::vector<Region>& lobes,
-               const IndexOptions& options);
+  /// forms: region_forms of the lobes. noise_V2: covariance of the contrast in the subspace (M-1 by
+  /// M-1, basis B of M by M-1). Regions without side or lobe are ignored; indices whose two regions
+  /// hold no point are left out.
+  PowerIndices(const SourceOperator& inverse, const std::vector<Eigen::MatrixXd>& forms,
+               const Eigen::MatrixXd& basis, const Eigen::MatrixXd& noise_V2,
+               const std::vector<Region>& lobes, const IndexOptions& options);
   /// data_V: M by T of the contrast, any reference.
   std::vector<PowerIndex> at(const Eigen::MatrixXd& data_V, const SampleRange& samples) const;
 

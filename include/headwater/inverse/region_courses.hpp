@@ -23,9 +23,15 @@ struct RegionCourses {
   Eigen::VectorXd share;      ///< #regions: variance of X in the dominant pattern, 0 to 1
 };
 
-/// outward: 3 by N, away from the head's centre. data_V: what the estimate was made from (its rank
-/// bounds the work: the singular vectors come from a (M-1)-square eigenproblem for each region).
-RegionCourses region_courses(const SourceOperator& inverse, const SourceEstimate& estimate,
+/// Q = A'A of each region, A (3K by M-1) the region's rows of the operator: the power of the
+/// region's points is z'Qz for z = map d. Made once; courses and indices both use them.
+std::vector<Eigen::MatrixXd> region_forms(const SourceOperator& inverse,
+                                          const std::vector<Region>& regions);
+
+/// forms: of these regions. outward: 3 by N, away from the head's centre. data_V: M by T, any
+/// reference. The eigenproblem of a region is as large as the rank of the data, at most M-1.
+RegionCourses region_courses(const SourceOperator& inverse,
+                             const std::vector<Eigen::MatrixXd>& forms,
                              const Eigen::MatrixXd& data_V, const std::vector<Region>& regions,
                              const Eigen::Matrix3Xd& outward);
 
