@@ -395,7 +395,9 @@ class Assembly {
       lattice_labels_ =
           template_labels(lattice_grid(usable ? out_.spacing_m : 7e-3, 92 * kMillimetre));
     try {
-      requested_regions(lattice_labels_, {request});
+      RegionRequest known_side = request;  // another side has been reported with the key
+      if (known_side.side != "left" && known_side.side != "right") known_side.side.clear();
+      requested_regions(lattice_labels_, {known_side});
     } catch (const Error& error) {
       keys_.problem(&entry, error.what());
     }

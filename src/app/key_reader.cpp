@@ -132,6 +132,12 @@ KeyReader::KeyReader(const TomlValue& root, std::string source)
     : root_(&root), defaults_(make_defaults()), source_(std::move(source)) {
   check_table(root, "");
   check_required(root, "");
+  for (const auto& record : key_records()) {  // sections that are not there at all
+    const std::string section = parent_of(record.name);
+    if (record.standard == "required" && !section.empty() && !section.ends_with("[]") &&
+        !root.find(section))
+      problem(nullptr, fmt::format("'{}' is missing: {}", record.name, record.meaning));
+  }
 }
 
 void KeyReader::problem(const TomlValue* where, const std::string& text) {
