@@ -110,13 +110,6 @@ class Assembly {
     } else {
       find_participants();
     }
-    for (const auto& name : out_.participants)
-      if (name == "mean" || name.empty() || name.find('/') != std::string::npos)
-        keys_.problem(
-            keys_.find("participants.table"),
-            fmt::format("'{}' cannot name a participant: it would not make a folder of its "
-                        "own ('mean' is the mean over participants).",
-                        name));
     for (const auto& name : keys_.texts("participants.leave_out")) {
       const auto found = std::find(out_.participants.begin(), out_.participants.end(), name);
       if (found == out_.participants.end())
@@ -126,6 +119,15 @@ class Assembly {
       else
         out_.participants.erase(found);
     }
+    for (const auto& name : out_.participants)
+      if (name == "mean" || name == "n/a" || name.empty() || name[0] == '.' ||
+          name.find('/') != std::string::npos)
+        keys_.problem(
+            keys_.find(keys_.has("participants.table") ? "participants.table" : "averages.file"),
+            fmt::format("'{}' cannot name a participant: it would not make a folder of its own "
+                        "('mean' is the mean over participants). Rename it, or name it in "
+                        "participants.leave_out.",
+                        name));
     if (out_.participants.empty() && keys_.problems().empty())
       keys_.problem(keys_.find("averages.file"),
                     fmt::format("no participant: no file fits {}.", out_.averages_pattern));
@@ -322,6 +324,9 @@ class Assembly {
     if (const auto window = keys_.numbers("noise.baseline_ms"); window.size() == 2) {
       out_.noise.baseline_from_s = window[0] * kMillisecond;
       out_.noise.baseline_to_s = window[1] * kMillisecond;
+      if (window[0] >= window[1])
+        keys_.problem(keys_.find("noise.baseline_ms"),
+                      "'noise.baseline_ms' must begin before it ends.");
     } else if (keys_.has("noise.baseline_ms")) {
       keys_.problem(keys_.find("noise.baseline_ms"), "'noise.baseline_ms' needs two numbers.");
     }
@@ -350,6 +355,9 @@ class Assembly {
     }
     out_.lcmv_from_s = keys_.number("lcmv.from_ms") * kMillisecond;
     if (keys_.has("lcmv.to_ms")) out_.lcmv_to_s = keys_.number("lcmv.to_ms") * kMillisecond;
+    if (out_.lcmv_from_s >= out_.lcmv_to_s)
+      keys_.problem(keys_.find(keys_.has("lcmv.to_ms") ? "lcmv.to_ms" : "lcmv.from_ms"),
+                    "'lcmv.to_ms' must lie after 'lcmv.from_ms'.");
     out_.lcmv_table = optional_path("lcmv.table");
     out_.lcmv.regularisation = keys_.number("lcmv.regularisation");
     out_.lcmv.mirror_paired = keys_.flag("lcmv.mirror_paired");
@@ -368,13 +376,37 @@ class Assembly {
                             text_of(*entry, "lobe"), fold_case(text_of(*entry, "side"))};
       if (request.gyri.empty() == request.lobe.empty())
         keys_.problem(entry, fmt::format("region '{}' needs either gyri or a lobe.", request.name));
+      else
+        check_region(*entry, request);
+      for (const auto& other : out_.regions)
+        if (file_label(other.name) == file_label(request.name))
+          keys_.problem(entry,
+                        fmt::format("regions '{}' and '{}' would share their columns: rename one.",
+                                    other.name, request.name));
       out_.regions.push_back(request);
+    }
+  }
+
+  /// Are there such gyri or such a lobe? Of an atlas only its reading can tell.
+  void check_region(const TomlValue& entry, const RegionRequest& request) {
+    if (out_.atlas || out_.points_table) return;
+    const bool usable = out_.spacing_m >= 4e-3 && out_.spacing_m <= 12e-3;
+    if (lattice_labels_.gyri.empty())
+      lattice_labels_ =
+          template_labels(lattice_grid(usable ? out_.spacing_m : 7e-3, 92 * kMillimetre));
+    try {
+      RegionRequest known_side = request;  // another side has been reported with the key
+      if (known_side.side != "left" && known_side.side != "right") known_side.side.clear();
+      requested_regions(lattice_labels_, {known_side});
+    } catch (const Error& error) {
+      keys_.problem(&entry, error.what());
     }
   }
 
   KeyReader& keys_;
   Experiment& out_;
   fs::path folder_;
+  PointLabels lattice_labels_;  ///< of the template's gyri, made when regions are asked for
 };
 
 }  // namespace

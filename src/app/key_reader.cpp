@@ -132,6 +132,12 @@ KeyReader::KeyReader(const TomlValue& root, std::string source)
     : root_(&root), defaults_(make_defaults()), source_(std::move(source)) {
   check_table(root, "");
   check_required(root, "");
+  for (const auto& record : key_records()) {  // sections that are not there at all
+    const std::string section = parent_of(record.name);
+    if (record.standard == "required" && !section.empty() && !section.ends_with("[]") &&
+        !root.find(section))
+      problem(nullptr, fmt::format("'{}' is missing: {}", record.name, record.meaning));
+  }
 }
 
 void KeyReader::problem(const TomlValue* where, const std::string& text) {
@@ -145,7 +151,9 @@ void KeyReader::check_table(const TomlValue& table, const std::string& prefix) {
     if (const auto* record = record_of(key)) {
       check_value(value, *record);
     } else if (const auto* any = record_of(prefix + ".*")) {
-      check_value(value, *any);
+      KeyRecord named = *any;
+      named.name = key;
+      check_value(value, named);
     } else if (is_section(key)) {
       if (value.is_table()) {
         check_table(value, key);
@@ -186,14 +194,28 @@ void KeyReader::check_number(const TomlValue& value, const KeyRecord& record) {
 }
 
 void KeyReader::check_text(const TomlValue& value, const KeyRecord& record) {
-  if (record.choices.empty()) return;
   const auto& text = std::get<std::string>(value.value);
+  if (text.empty() && record.standard == "required")
+    problem(&value, fmt::format("'{}' is empty: {}", record.name, record.meaning));
+  if (record.choices.empty()) return;
   if (!find_label_any_case(record.choices, text))
     problem(&value, fmt::format("'{}' is \"{}\": expected {}.{}", record.name, text,
                                 join_labels(record.choices), did_you_mean(text, record.choices)));
 }
 
+void KeyReader::check_members(const TomlValue& table, const KeyRecord& record) {
+  const bool numbers = record.type == T::number_map;
+  for (const auto& [name, value] : std::get<TomlValue::Table>(table.value))
+    if (numbers ? !value.is_number() : !value.is_text())
+      problem(&value, fmt::format("'{}.{}' is {}: expected {}.", record.name, name, value.kind(),
+                                  type_name(numbers ? T::number : T::text)));
+}
+
 void KeyReader::check_value(const TomlValue& value, const KeyRecord& record) {
+  if (value.is_table() && (record.type == T::number_map || record.type == T::text_map)) {
+    check_members(value, record);
+    return;
+  }
   if (!has_type(value, record.type)) {
     std::string expected = type_name(record.type);
     if (record.type == T::effect_map) expected = "{ factor = [\"first level\", \"second level\"] }";

@@ -34,6 +34,8 @@ class KeyReader {
  private:
   void check_table(const TomlValue& table, const std::string& prefix);
   void check_value(const TomlValue& value, const KeyRecord& record);
+  /// Each member of a table of numbers or of texts.
+  void check_members(const TomlValue& table, const KeyRecord& record);
   void check_number(const TomlValue& value, const KeyRecord& record);
   void check_text(const TomlValue& value, const KeyRecord& record);
   void check_required(const TomlValue& table, const std::string& prefix);

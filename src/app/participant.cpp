@@ -2,6 +2,9 @@
 #include <headwater/app/participant.hpp>
 #include <headwater/base/error.hpp>
 #include <headwater/base/table.hpp>
+#include <headwater/base/units.hpp>
+
+#include <fmt/core.h>
 
 #include <algorithm>
 
@@ -25,6 +28,9 @@ ParticipantData load_participant(const Experiment& experiment, const std::string
     data.inputs.push_back(path.string());
   }
   make_consistent(data.averages, data.inputs);
+  for (const auto& plan : experiment.contrasts)
+    for (const auto& window : windows_of(experiment, plan.name))
+      samples_in(data.averages[0].times_s, window);  // throws where there is none
   const Labels& channels = data.averages[0].channels;
   data.noise = experiment.noise.from == NoiseOptions::From::table
                    ? read_noise_table(experiment.noise.table, channels, experiment.noise.shrinkage)
@@ -35,11 +41,34 @@ ParticipantData load_participant(const Experiment& experiment, const std::string
   return data;
 }
 
+namespace {
+
+/// Throws InputError that names everyone whose samples differ from the first participant's.
+void check_same_times(const std::vector<const ParticipantData*>& participants) {
+  const Eigen::VectorXd& first = participants[0]->averages[0].times_s;
+  const double step = (first[first.size() - 1] - first[0]) / static_cast<double>(first.size() - 1);
+  Labels others;
+  for (const auto* participant : participants) {
+    const Eigen::VectorXd& times = participant->averages[0].times_s;
+    if (times.size() != first.size() || (times - first).cwiseAbs().maxCoeff() > 1e-3 * step)
+      others.push_back(participant->name);
+  }
+  if (!others.empty())
+    throw InputError(fmt::format(
+        "there is no mean over participants: the samples of {} differ from those of {} ({} from "
+        "{:g} to {:g} ms). Cut the averages alike, or leave out participants.",
+        join_labels(others), participants[0]->name, first.size(), first[0] / kMillisecond,
+        first[first.size() - 1] / kMillisecond));
+}
+
+}  // namespace
+
 ParticipantData mean_participant(const Experiment& experiment,
                                  const std::vector<const ParticipantData*>& participants,
                                  ForwardModels& forward_models) {
   ParticipantData mean;
   mean.name = kMeanName;
+  check_same_times(participants);
   for (std::size_t k = 0; k < experiment.conditions.size(); ++k) {
     std::vector<Average> averages;
     for (const auto* participant : participants) averages.push_back(participant->averages[k]);

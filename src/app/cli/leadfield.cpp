@@ -40,6 +40,26 @@ NamedPoints read_points(const std::string& path, const char* what) {
   return points;
 }
 
+/// Says by name which electrodes have no direction and which points lie outside the brain.
+void check_points(const Options& options, const HeadModel& head, const NamedPoints& electrodes,
+                  const NamedPoints& points) {
+  std::string problems;
+  for (std::size_t m = 0; m < electrodes.names.size(); ++m)
+    if (!(electrodes.positions_m.col(static_cast<Eigen::Index>(m)).norm() > 0))
+      problems += fmt::format("{}: electrode '{}' lies at the origin: it has no direction.\n",
+                              options.electrodes, electrodes.names[m]);
+  for (std::size_t p = 0; p < points.names.size(); ++p)
+    if (const double r = points.positions_m.col(static_cast<Eigen::Index>(p)).norm();
+        !(r < head.radii_m[0]))
+      problems += fmt::format(
+          "{}: point '{}' lies {:g} mm from the centre, outside the innermost shell ({:g} mm). "
+          "Points belong inside it, in the head frame and in mm.\n",
+          options.points, points.names[p], r / kMillimetre, head.radii_m[0] / kMillimetre);
+  if (problems.empty()) return;
+  problems.pop_back();
+  throw InputError(problems);
+}
+
 void write_lead_field(const Options& options) {
   HeadModel head;
   head.radii_m = Eigen::Map<const Eigen::VectorXd>(
@@ -50,6 +70,7 @@ void write_lead_field(const Options& options) {
   check_head(head);
   const NamedPoints electrodes = read_points(options.electrodes, "electrodes");
   const NamedPoints points = read_points(options.points, "source points");
+  check_points(options, head, electrodes, points);
   Eigen::MatrixXd gain = compute_gain(head, electrodes.positions_m, points.positions_m);
   if (options.reference == "average") gain = average_reference(gain.rows()) * gain;
   Labels columns{"name"};

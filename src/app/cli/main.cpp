@@ -2,6 +2,7 @@
 #include "app/cli/command.hpp"
 
 #include <headwater/base/error.hpp>
+#include <headwater/base/labels.hpp>
 #include <headwater/base/version.hpp>
 
 #include <fmt/core.h>
@@ -33,6 +34,17 @@ int main(int argc, char** argv) {
   cli::add_keys(program, outcome);
   try {
     program.parse(argc, argv);
+  } catch (const CLI::RequiredError& error) {
+    if (argc < 2 || argv[1][0] == '-' || !program.get_subcommands().empty()) {
+      program.exit(error);
+    } else {
+      Labels commands;
+      for (const auto* command : program.get_subcommands({}))
+        commands.push_back(command->get_name());
+      fmt::print(stderr, "headwater: there is no command '{}'; there are {}.{}\n", argv[1],
+                 join_labels(commands), did_you_mean(argv[1], commands));
+    }
+    return static_cast<int>(Trouble::experiment);
   } catch (const CLI::ParseError& error) {
     const int code = program.exit(error);
     return code == 0 ? 0 : static_cast<int>(Trouble::experiment);
