@@ -5,18 +5,32 @@
 
 #include <gtest/gtest.h>
 
+#include <algorithm>
+#include <sstream>
+
 namespace headwater {
 namespace {
 
 namespace fs = std::filesystem;
 using Cells = std::vector<std::string>;
 
-/// One line of the program's for each person named, saying `parts`; none for the others.
+/// The people whom the program names as failed: "headwater: sub-01 and sub-02: reason".
+Labels failed_people(const std::string& said) {
+  Labels people;
+  std::istringstream lines(said);
+  for (std::string line; std::getline(lines, line);) {
+    if (line.rfind("headwater: ", 0) != 0) continue;
+    const std::string names = line.substr(11, line.find(": ", 11) - 11);
+    for (const char* person : {"sub-01", "sub-02", "sub-03", "mean"})
+      if (holds(names, person)) people.push_back(person);
+  }
+  std::sort(people.begin(), people.end());
+  return people;
+}
+
+/// These people failed, each named once, with all `parts` said.
 void expect_told_of(const std::string& said, const Labels& people, const Cells& parts) {
-  for (const std::string person : {"sub-01", "sub-02", "sub-03", "mean"})
-    EXPECT_EQ(holds(said, "headwater: " + person + ": "), find_label(people, person).has_value())
-        << person << " in:\n"
-        << said;
+  EXPECT_EQ(failed_people(said), people) << said;
   expect_said(said, parts);
 }
 
@@ -75,6 +89,15 @@ TEST(FaultAverages, CellsThatAreNoNumbersAreNamedByLineAndColumn) {
                         {"sub-02_late.tsv, line 7, column 'AF3': found '" + std::string(text) + "'",
                          "expected a finite number"});
   expect_line_refused(7, put("1,5"), {"line 7, column 'AF3': found '1,5'", "decimal"});
+}
+
+TEST(FaultAverages, AReasonThatAllShareIsSaidOnce) {
+  const SmallExperiment small;
+  small.change_averages([](const std::string& text) { return with(text, "\tFz\t", "\tFzz\t"); });
+  const ProgramRun run = small.run();
+  EXPECT_EQ(run.exit_code, 3);
+  expect_said(run.err, {"headwater: sub-01, sub-02 and sub-03: ", "'Fzz' is not a name"});
+  EXPECT_EQ(run.err.find("Fzz"), run.err.rfind("Fzz"));
 }
 
 TEST(FaultAverages, RowsOfOtherLengthAreNamed) {

@@ -46,8 +46,15 @@ StageOptions stage_options(const ExperimentOptions& options) {
 }
 
 int report_failures(const std::vector<Failure>& failures, bool any_done) {
-  for (const auto& failure : failures)
-    fmt::print(stderr, "headwater: {}: {}\n", failure.participant, failure.reason);
+  std::vector<std::pair<std::string, Labels>> reasons;  // what many share is said once
+  for (const auto& failure : failures) {
+    auto found = std::find_if(reasons.begin(), reasons.end(),
+                              [&](const auto& entry) { return entry.first == failure.reason; });
+    if (found == reasons.end()) found = reasons.insert(found, {failure.reason, {}});
+    found->second.push_back(failure.participant);
+  }
+  for (const auto& [reason, people] : reasons)
+    fmt::print(stderr, "headwater: {}: {}\n", join_labels(people), reason);
   if (failures.empty()) return 0;
   return static_cast<int>(any_done ? Trouble::some_participants : failures[0].trouble);
 }
