@@ -15,12 +15,16 @@ constexpr double kTolerance = 1e-10;
 }  // namespace
 
 Eigenpair largest_eigenpair(const Eigen::MatrixXd& symmetric) {
-  if (symmetric.rows() >= kWholeBelow && symmetric.cwiseAbs().maxCoeff() > 0) {
-    Spectra::DenseSymMatProd<double> product(symmetric);
+  const double scale = symmetric.cwiseAbs().maxCoeff();
+  if (symmetric.rows() >= kWholeBelow && scale > 0) {
+    // Spectra holds residuals against an absolute floor too: numbers of 1e-18, as SI units make
+    // them, would pass for converged at once.
+    const Eigen::MatrixXd scaled = symmetric / scale;
+    Spectra::DenseSymMatProd<double> product(scaled);
     Spectra::SymEigsSolver<Spectra::DenseSymMatProd<double>> solver(product, 1, kLanczosVectors);
     solver.init();
     if (solver.compute(Spectra::SortRule::LargestAlge, 200, kTolerance) == 1)
-      return {solver.eigenvalues()[0], solver.eigenvectors().col(0)};
+      return {scale * solver.eigenvalues()[0], solver.eigenvectors().col(0)};
   }
   const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(symmetric);
   const Eigen::Index last = symmetric.rows() - 1;

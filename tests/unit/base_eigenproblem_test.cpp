@@ -15,7 +15,7 @@ TEST_P(BaseEigenproblem, AgreesWithTheFullDecomposition) {
   const int n = GetParam();
   RandomStream random(7, "eigenproblem");
   const Eigen::MatrixXd half = random.normal_matrix(n, 2 * n);
-  for (const double scale : {1e-24, 1.0, 1e16}) {
+  for (const double scale : {1e-24, 1e-20, 1e-17, 1e-12, 1.0, 1e16}) {
     const Eigen::MatrixXd a = scale * half * half.transpose();
     const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> whole(a);
     const Eigenpair pair = largest_eigenpair(a);
