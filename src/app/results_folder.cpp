@@ -11,6 +11,7 @@
 
 #include <fmt/core.h>
 
+#include <algorithm>
 #include <cmath>
 
 namespace headwater {
@@ -193,8 +194,23 @@ std::vector<SummaryRow> ResultsFolder::write_located(
   return summarise(participant, contrast, located, dipoles);
 }
 
-void ResultsFolder::write_summary(const std::vector<SummaryRow>& rows) const {
-  write_table(root_ / "summary.tsv", summary_table(rows));
+void ResultsFolder::write_summary(const std::vector<SummaryRow>& rows, bool keep_others) const {
+  OutputTable table = summary_table(rows);
+  const fs::path file = root_ / "summary.tsv";
+  if (keep_others && fs::exists(file)) {
+    const Table earlier = read_table(file, "summary");
+    const auto same_work = [](const auto& a, const auto& b) {
+      return a[0] == b[0] && a[1] == b[1] && a[2] == b[2];  // participant, contrast, method
+    };
+    std::vector<std::vector<std::string>> kept;
+    for (const auto& old : earlier.rows)
+      if (earlier.columns.size() == table.columns.size() &&
+          std::none_of(table.rows.begin(), table.rows.end(),
+                       [&](const auto& row) { return same_work(row, old); }))
+        kept.push_back(old);
+    table.rows.insert(table.rows.begin(), kept.begin(), kept.end());
+  }
+  write_table(file, table);
 }
 
 void ResultsFolder::write_provenance(const Experiment& experiment,

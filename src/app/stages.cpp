@@ -149,7 +149,9 @@ LocateReport locate(const Experiment& experiment, const InspectReport& read,
   }
   for (const auto& participant : read.participants)
     inputs.insert(inputs.end(), participant.inputs.begin(), participant.inputs.end());
-  results.write_summary(report.rows);
+  const bool selected =
+      !options.participants.empty() || !options.contrasts.empty() || !options.methods.empty();
+  results.write_summary(report.rows, selected);
   results.write_provenance(experiment, inputs);
   return report;
 }

@@ -22,7 +22,7 @@ foreach(party IN LISTS parties)
   endif()
 endforeach()
 set(standard "^[a-z_0-9]+$")  # <vector>
-set(system "^(sys/)?(unistd|fcntl|stat|types|wait|ioctl|file|dlfcn|signal|termios|resource)\\.h$")
+set(system "^(sys/)?(unistd|fcntl|stat|types|wait|ioctl|file|dlfcn|signal|termios|resource|malloc)\\.h$")
 set(own "^(headwater|base|signal|model|inverse|inference|view|app|reference|cli)/|^[a-z_0-9]+\\.hpp$")
 
 function(check_include file included)

@@ -62,7 +62,9 @@ class ResultsFolder {
                                         const ContrastWaveform& contrast,
                                         const LocatedContrast& located,
                                         const std::vector<WindowDipoles>& dipoles) const;
-  void write_summary(const std::vector<SummaryRow>& rows) const;
+  /// keep_others: rows of an earlier summary.tsv stay unless their participant, contrast and method
+  /// are among the new ones (a run over a selection).
+  void write_summary(const std::vector<SummaryRow>& rows, bool keep_others) const;
   void write_provenance(const Experiment& experiment, const std::vector<std::string>& inputs) const;
 
  private:
