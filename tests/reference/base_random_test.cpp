@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// xoshiro256++ and splitmix64 against a plain transcription of the authors' public-domain code
+// xoshiro256++ and splitmix64 against a plain rendering of the authors' public-domain code
 // (prng.di.unimi.it: xoshiro256plusplus.c, splitmix64.c) and FNV-1a test vectors
 // (isthe.com/chongo/tech/comp/fnv: "" -> cbf29ce484222325, "a" -> af63dc4c8601ec8c).
 #include <headwater/base/random.hpp>
@@ -35,7 +35,7 @@ std::uint64_t xoshiro_next() {
   return result;
 }
 
-TEST(BaseRandom, SplitmixTranscriptionGivesThePublishedFirstValue) {
+TEST(BaseRandom, SplitmixRenderingGivesThePublishedFirstValue) {
   x = 1234567;  // first outputs for this seed: rosettacode.org, "Pseudo-random numbers/Splitmix64"
   EXPECT_EQ(splitmix64_next(), 6457827717110365317u);
   EXPECT_EQ(splitmix64_next(), 3203168211198807973u);
@@ -53,7 +53,7 @@ TEST(BaseRandom, StreamIsXoshiroSeededBySplitmixAndHash) {
     }
 }
 
-TEST(BaseRandom, XoshiroTranscriptionGivesThePublishedFirstValue) {
+TEST(BaseRandom, XoshiroRenderingGivesThePublishedFirstValue) {
   // State 1, 2, 3, 4: the first values that the rand_xoshiro crate tests (taken from the authors'
   // C).
   s[0] = 1, s[1] = 2, s[2] = 3, s[3] = 4;
