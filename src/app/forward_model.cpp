@@ -5,6 +5,8 @@
 #include <headwater/base/units.hpp>
 #include <headwater/model/lead_field.hpp>
 
+#include <fmt/core.h>
+
 namespace headwater {
 namespace {
 
@@ -22,6 +24,25 @@ SourceGrid read_points(const Experiment& experiment, double scalp_radius_m) {
   if (const auto repeated = repeated_labels(names); !repeated.empty())
     throw InputError(table.source + ": repeated point names: " + join_labels(repeated) + ".");
   return point_grid(names, points, experiment.point_space, scalp_radius_m);
+}
+
+/// Electrodes are used as directions from the frame's origin: a table about another origin -
+/// between the ears, say - would turn all of them without a word.
+constexpr double kLargestOffset = 25 * kMillimetre;
+
+SphereFit centred_sphere(const Montage& table, const std::string& path) {
+  const SphereFit fit = fit_head_sphere(table);
+  if (fit.centre.norm() > kLargestOffset)
+    throw InputError(fmt::format(
+        "{}: the sphere through the electrodes has its centre at ({:.0f}, {:.0f}, {:.0f}) mm, "
+        "{:.0f} mm from "
+        "the origin of the head frame: expected within {:.0f} mm. Is the table in MNI space "
+        "(montage.space = \"MNI\"), or about another origin? Shift it so that the centre is the "
+        "origin.",
+        path, fit.centre.x() / kMillimetre, fit.centre.y() / kMillimetre,
+        fit.centre.z() / kMillimetre, fit.centre.norm() / kMillimetre,
+        kLargestOffset / kMillimetre));
+  return fit;
 }
 
 }  // namespace
@@ -60,7 +81,7 @@ std::shared_ptr<const ForwardModel> ForwardModels::of(const std::string& partici
   }
   const auto path = fill_pattern(experiment_->positions, participant, "");
   const Montage table = read_positions(path, experiment_->position_space);
-  return of(select_positions(table, channels, path.string()), fit_head_sphere(table));
+  return of(select_positions(table, channels, path.string()), centred_sphere(table, path.string()));
 }
 
 std::shared_ptr<const ForwardModel> ForwardModels::of(const Montage& montage,

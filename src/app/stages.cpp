@@ -169,7 +169,8 @@ OutputTable inspect_table(const InspectReport& report) {
                      {"shrinkage", "Weight of the scaled identity", ""},
                      {"noise_uV", "Root mean square noise of a single trial", "uV"},
                      {"sphere_mm", "Radius of the sphere through the positions", "mm"},
-                     {"sphere_rms_mm", "Root mean square distance from it", "mm"}},
+                     {"sphere_rms_mm", "Root mean square distance from it", "mm"},
+                     {"sphere_offset_mm", "Distance of its centre from the frame's origin", "mm"}},
                     {}};
   for (const auto& participant : report.participants) {
     double fewest = participant.averages[0].trials, most = fewest;
@@ -190,7 +191,8 @@ OutputTable inspect_table(const InspectReport& report) {
                           format_number(noise.condition, 3), format_fixed(noise.shrinkage, 3),
                           format_number(std::sqrt(variance) / kMicrovolt, 3),
                           fitted ? format_fixed(sphere.radius / kMillimetre, 1) : "n/a",
-                          fitted ? format_fixed(sphere.rms / kMillimetre, 1) : "n/a"});
+                          fitted ? format_fixed(sphere.rms / kMillimetre, 1) : "n/a",
+                          fitted ? format_fixed(sphere.centre.norm() / kMillimetre, 1) : "n/a"});
   }
   return table;
 }

@@ -209,6 +209,29 @@ TEST(FaultAverages, CountsMustBeThereAndBeCounts) {
   }
 }
 
+TEST(FaultAverages, PositionsAboutAnotherOriginAreRefused) {
+  const SmallExperiment small;
+  const Montage montage = standard_montage(small.leads, 92 * kMillimetre);
+  const auto inspect_shifted = [&](double up_mm) {
+    std::string table = "name\tx_mm\ty_mm\tz_mm\n";
+    for (std::size_t k = 0; k < small.leads.size(); ++k) {
+      const Eigen::Vector3d at = montage.positions.col(static_cast<Eigen::Index>(k)) / kMillimetre;
+      table += small.leads[k] + "\t" + format_number(at.x()) + "\t" + format_number(at.y()) + "\t" +
+               format_number(at.z() + up_mm) + "\n";
+    }
+    small.write("cap.tsv", table);
+    std::string experiment = kSmallExperiment;
+    experiment.replace(experiment.find("\"standard\""), 10, "\"cap.tsv\"");
+    small.write("experiment.toml", experiment);
+    return run_program({"inspect", "experiment.toml"}, small.folder);
+  };
+  EXPECT_EQ(inspect_shifted(0).exit_code, 0);
+  const ProgramRun run = inspect_shifted(45);
+  EXPECT_EQ(run.exit_code, 3);
+  EXPECT_TRUE(holds(run.err, "cap.tsv: the sphere through the electrodes has its centre at"));
+  EXPECT_TRUE(holds(run.err, "45 mm from the origin"));
+}
+
 TEST(FaultAverages, AMissingFileStopsOnePerson) {
   const SmallExperiment small;
   fs::remove(small.average("sub-02", "steady"));
