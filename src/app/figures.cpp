@@ -68,6 +68,8 @@ void add_marks(SourcePicture& picture, const fs::path& peaks_file, const std::st
       false_peak = cell(row, "note").rfind("likely false", 0) == 0;
       mark.caption += fmt::format(", {:.0f} ms{}", peaks.number(row, peaks.column("latency_ms")),
                                   false_peak ? ", likely false" : "");
+      if (!false_peak && cell(row, "note") != "n/a")
+        picture.notes.push_back(fmt::format("M: {}.", cell(row, "note")));
       peak_marked = true;
     }
     picture.marks.push_back(mark);

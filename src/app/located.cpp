@@ -8,6 +8,8 @@
 #include <headwater/inverse/sloreta.hpp>
 #include <headwater/signal/noise_covariance.hpp>
 
+#include <fmt/core.h>
+
 #include <limits>
 #include <optional>
 #include <set>
@@ -95,7 +97,8 @@ std::optional<GramSpectrum> Locator::Engine::estimate(const Experiment& experime
   located.inverse = lcmv->at(scale);
   constexpr double kNone = std::numeric_limits<double>::quiet_NaN();
   choice.used = choice.gcv = choice.l_curve = choice.snr3 = choice.effective_parameters = kNone;
-  choice.rule = "none";
+  choice.rule = fmt::format("data covariance plus {:g} of its mean eigenvalue",
+                            experiment.lcmv.regularisation);
   return {};
 }
 
