@@ -31,7 +31,7 @@ SourceGrid read_points(const Experiment& experiment, double scalp_radius_m) {
 constexpr double kLargestOffset = 25 * kMillimetre;
 
 SphereFit centred_sphere(const Montage& table, const std::string& path) {
-  const SphereFit fit = fit_head_sphere(table);
+  SphereFit fit = fit_head_sphere(table);
   if (fit.centre.norm() > kLargestOffset)
     throw InputError(fmt::format(
         "{}: the sphere through the electrodes has its centre at ({:.0f}, {:.0f}, {:.0f}) mm, "

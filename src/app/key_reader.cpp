@@ -147,7 +147,7 @@ void KeyReader::problem(const TomlValue* where, const std::string& text) {
 
 void KeyReader::check_table(const TomlValue& table, const std::string& prefix) {
   for (const auto& [name, value] : std::get<TomlValue::Table>(table.value)) {
-    const std::string key = prefix.empty() ? name : prefix + "." + name;
+    const std::string key = prefix.empty() ? name : fmt::format("{}.{}", prefix, name);
     if (const auto* record = record_of(key)) {
       check_value(value, *record);
     } else if (const auto* any = record_of(prefix + ".*")) {

@@ -12,6 +12,7 @@ namespace {
 constexpr double kAny = std::numeric_limits<double>::infinity();
 using T = KeyType;
 
+// NOLINTNEXTLINE(readability-function-size): a table
 std::vector<KeyRecord> make_records() {
   return {
       {"title", T::text, "", 0, 0, {}, "\"\"", "Title of the experiment, for pictures and tables."},

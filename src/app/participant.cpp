@@ -71,13 +71,16 @@ ParticipantData mean_participant(const Experiment& experiment,
   check_same_times(participants);
   for (std::size_t k = 0; k < experiment.conditions.size(); ++k) {
     std::vector<Average> averages;
+    averages.reserve(participants.size());
     for (const auto* participant : participants) averages.push_back(participant->averages[k]);
     mean.averages.push_back(mean_average(averages));
   }
   std::vector<NoiseCovariance> noise;
+  noise.reserve(participants.size());
   for (const auto* participant : participants) noise.push_back(participant->noise);
   for (std::size_t k = 0; k < experiment.contrasts.size(); ++k) {
     std::vector<ContrastWaveform> contrasts;
+    contrasts.reserve(participants.size());
     for (const auto* participant : participants) contrasts.push_back(participant->contrasts[k]);
     mean.contrasts.push_back(mean_contrast(contrasts, noise));
   }

@@ -66,6 +66,31 @@ void write_series(const fs::path& base, const ContrastWaveform& contrast,
   write_pvd(with_suffix(base, "_series.pvd"), steps);
 }
 
+/// Source courses with their three components, 17 digits. base: without suffix.
+void write_source_courses(const fs::path& base, const ContrastWaveform& contrast,
+                          const LocatedContrast& located, const ForwardModel& forward) {
+  Labels columns{"time_s"};
+  for (Eigen::Index p = 0; p < forward.grid.size(); ++p) {
+    const std::string name = forward.grid.names.empty()
+                                 ? fmt::format("p{}", p + 1)
+                                 : forward.grid.names[static_cast<std::size_t>(p)];
+    for (const char* axis : {"_x", "_y", "_z"}) columns.push_back(name + axis);
+  }
+  Labels times;
+  for (const double t : contrast.times_s) times.push_back(format_number(t, 17));
+  write_file(
+      with_suffix(base, ".tsv"),
+      number_table_text(columns, times,
+                        located.estimate.components.transpose() / located.inverse.unit_in_SI, 17));
+  Json note = Json::object();
+  note.set("Description",
+           "Source courses: for each point of points.tsv its components to the right (_x), "
+           "forwards (_y) and upwards (_z).");
+  note.set("Quantity", located.inverse.quantity);
+  note.set("Units", located.inverse.unit.empty() ? "multiples of the noise" : located.inverse.unit);
+  write_json(with_suffix(base, ".json"), note);
+}
+
 }  // namespace
 
 fs::path ResultsFolder::file(const std::string& participant, const std::string& contrast,
@@ -168,29 +193,8 @@ std::vector<SummaryRow> ResultsFolder::write_located(
     }
     if (experiment.write_series) write_series(path("", "sources"), contrast, located, forward);
   }
-  if (experiment.write_courses) {
-    Labels columns{"time_s"};
-    for (Eigen::Index p = 0; p < forward.grid.size(); ++p) {
-      const std::string name = forward.grid.names.empty()
-                                   ? fmt::format("p{}", p + 1)
-                                   : forward.grid.names[static_cast<std::size_t>(p)];
-      for (const char* axis : {"_x", "_y", "_z"}) columns.push_back(name + axis);
-    }
-    Labels times;
-    for (const double t : contrast.times_s) times.push_back(format_number(t, 17));
-    write_file(path("", "sourceCourses.tsv"),
-               number_table_text(
-                   columns, times,
-                   located.estimate.components.transpose() / located.inverse.unit_in_SI, 17));
-    Json note = Json::object();
-    note.set("Description",
-             "Source courses: for each point of points.tsv its components to the right (_x), "
-             "forwards (_y) and upwards (_z).");
-    note.set("Quantity", located.inverse.quantity);
-    note.set("Units",
-             located.inverse.unit.empty() ? "multiples of the noise" : located.inverse.unit);
-    write_json(path("", "sourceCourses.json"), note);
-  }
+  if (experiment.write_courses)
+    write_source_courses(path("", "sourceCourses"), contrast, located, forward);
   return summarise(participant, contrast, located, dipoles);
 }
 

@@ -79,7 +79,7 @@ std::vector<ColumnInfo> with_place_columns(std::vector<ColumnInfo> before,
 }
 
 std::string pair_note(const ForwardModel& forward, const DipoleVerdict& verdict) {
-  const std::string note = fmt::format(
+  std::string note = fmt::format(
       "one mirrored pair leaves {} % of the window's mean map unexplained, the best single point "
       "{} %",
       percent(verdict.pair.unexplained), percent(verdict.one.unexplained));

@@ -12,6 +12,40 @@
 
 namespace headwater {
 
+namespace {
+
+/// Rank, condition and size of the contrast's own noise.
+Json contrast_noise_json(const ContrastWaveform& contrast) {
+  const Eigen::VectorXd variances =
+      Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd>(contrast.noise_V2, Eigen::EigenvaluesOnly)
+          .eigenvalues();
+  const double largest = variances[variances.size() - 1];
+  Json contrast_noise = Json::object();
+  contrast_noise.set("Rank", (variances.array() > 1e-10 * largest).count())
+      .set("Condition", largest / variances[0])
+      .set("RootMeanSquare_uV", std::sqrt(variances.mean()) / kMicrovolt);
+  return contrast_noise;
+}
+
+/// The choice in use, and beside it what every rule would take.
+Json regularisation_json(const RegularisationChoice& choice) {
+  Json regularisation = Json::object();
+  regularisation.set("Rule", choice.rule)
+      .set("Lambda", choice.used)
+      .set("EffectiveParameters", choice.effective_parameters);
+  Json choices = Json::object();
+  choices.set("gcv", choice.gcv)
+      .set("l-curve", choice.l_curve)
+      .set("snr 3", choice.snr3)
+      .set("discrepancy", choice.discrepancy);
+  choices.set("gcv at the edge of its search", choice.gcv_at_edge)
+      .set("l-curve at the edge of its search", choice.l_curve_at_edge);
+  regularisation.set("AllChoices", choices);
+  return regularisation;
+}
+
+}  // namespace
+
 Json fit_json(const ParticipantData& participant, const ContrastWaveform& contrast,
               const LocatedContrast& located) {
   Json json = Json::object();
@@ -30,29 +64,8 @@ Json fit_json(const ParticipantData& participant, const ContrastWaveform& contra
         .set("IndependentSamples", noise.independent_samples);
     json.set("NoiseCovariance", part);
   }
-  const Eigen::VectorXd variances =
-      Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd>(contrast.noise_V2, Eigen::EigenvaluesOnly)
-          .eigenvalues();
-  const double largest = variances[variances.size() - 1];
-  Json contrast_noise = Json::object();
-  contrast_noise.set("Rank", (variances.array() > 1e-10 * largest).count())
-      .set("Condition", largest / variances[0])
-      .set("RootMeanSquare_uV", std::sqrt(variances.mean()) / kMicrovolt);
-  json.set("ContrastNoise", contrast_noise);
-  const auto& choice = located.regularisation;
-  Json regularisation = Json::object();
-  regularisation.set("Rule", choice.rule)
-      .set("Lambda", choice.used)
-      .set("EffectiveParameters", choice.effective_parameters);
-  Json choices = Json::object();
-  choices.set("gcv", choice.gcv)
-      .set("l-curve", choice.l_curve)
-      .set("snr 3", choice.snr3)
-      .set("discrepancy", choice.discrepancy);
-  choices.set("gcv at the edge of its search", choice.gcv_at_edge)
-      .set("l-curve at the edge of its search", choice.l_curve_at_edge);
-  regularisation.set("AllChoices", choices);
-  json.set("Regularisation", regularisation);
+  json.set("ContrastNoise", contrast_noise_json(contrast));
+  json.set("Regularisation", regularisation_json(located.regularisation));
   if (located.iterations > 0)
     json.set("Iterations", located.iterations).set("Converged", located.converged);
   Json windows = Json::object();

@@ -49,8 +49,8 @@ class Locator {
   Locator(const Experiment& experiment, const ParticipantData& participant);
   ~Locator();
   /// Contrast by its place in the experiment; windows: those meant for it.
-  std::vector<WindowDipoles> dipoles(std::size_t contrast, const std::vector<TimeWindow>& windows);
-  LocatedContrast locate(std::size_t contrast, const std::string& method,
+  std::vector<WindowDipoles> dipoles(std::size_t place, const std::vector<TimeWindow>& windows);
+  LocatedContrast locate(std::size_t place, const std::string& method,
                          const std::vector<TimeWindow>& windows);
 
  private:
