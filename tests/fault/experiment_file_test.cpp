@@ -175,8 +175,9 @@ TEST(FaultExperimentFile, AFileThatIsNotThereIsNamed) {
 TEST(FaultExperimentFile, NamesThatCannotNameFilesAreRefused) {
   expect_refused(with(kSmallExperiment, "name = \"late minus steady\"", "name = \"\""),
                  {"experiment.toml:15:8: 'contrasts[].name' is empty"});
-  expect_refused(std::string(kSmallExperiment) + "[[regions]]\nname = \"r\"\ngyri = [\"XXX\"]\n",
-                 {"experiment.toml:26:1: Region 'r': no gyrus 'XXX'"});
+  expect_refused(
+      std::string(kSmallExperiment) + "[[regions]]\nname = \"r\"\ngyri = [\"Nowhere\"]\n",
+      {"experiment.toml:26:1: Region 'r': no gyrus 'Nowhere'"});
   expect_refused(std::string(kSmallExperiment) + "[noise]\nbaseline_ms = [0, -100]\n",
                  {"experiment.toml:27:15: 'noise.baseline_ms' must begin before it ends"});
 }

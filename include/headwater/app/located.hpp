@@ -33,7 +33,7 @@ struct LocatedWindow {
 };
 
 struct LocatedContrast {
-  SourceOperator inverse;  ///< kernel and map emptied after use unless courses are written
+  SourceOperator inverse;
   RegularisationChoice regularisation;  ///< used = NaN for LCMV
   int iterations = 0;                   ///< eLORETA
   bool converged = true;
