@@ -38,11 +38,12 @@ struct NoiseCovariance {
 };
 
 struct NoiseOptions {
-  enum class From { baseline, residual, table } from = From::baseline;
+  enum class From { baseline, residual, table, trials } from = From::baseline;
   double baseline_from_s = 0, baseline_to_s = 0;  ///< both ends included; equal: all samples < 0
   double after_s = 0;                             ///< residual: samples at or after this latency
   std::filesystem::path table;
-  std::optional<double> shrinkage;  ///< 0 to 1; empty: Ledoit-Wolf (table: 0)
+  std::optional<double> shrinkage;  ///< 0 to 1; empty: estimated (table: 0)
+  bool oas = false;                 ///< estimated by OAS (trial_covariance.hpp), else Ledoit-Wolf
 };
 
 /// From averages of one participant (consistent channels and times). Throws InputError: no sample

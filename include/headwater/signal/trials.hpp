@@ -1,0 +1,104 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+// Single trials out of a recording: epochs about events, cleaned by rules that leave a record.
+//
+// Order of the steps: (1) zero-phase filters over each gap-free segment; (2) epochs, sample nearest
+// to the event at 0; (3) drift: a polynomial fitted to the epoch by least squares is subtracted;
+// (4) the baseline's mean is subtracted; (5) every n-th sample, counted from 0; (6) bad leads
+// (bad_leads.hpp) are found over all trials, then left out or interpolated; (7) trials in which a
+// remaining lead breaks a limit are rejected.
+#pragma once
+#include <headwater/signal/average.hpp>
+#include <headwater/signal/bad_leads.hpp>
+#include <headwater/signal/electrodes.hpp>
+#include <headwater/signal/recording.hpp>
+
+#include <Eigen/Core>
+
+#include <functional>
+#include <map>
+#include <optional>
+#include <string>
+#include <utility>
+#include <vector>
+
+namespace headwater {
+
+/// Which events are a condition's: every named column of the events holds this text (numbers:
+/// equal as numbers).
+struct EventChoice {
+  std::string condition;
+  std::map<std::string, std::string> where;  ///< column -> value
+};
+
+struct TrialOptions {
+  double from_s = -0.1, to_s = 0.6;                     ///< both ends included
+  std::optional<std::pair<double, double>> baseline_s;  ///< empty: none
+  int drift_degree = -1;                                ///< -1: none; 0: mean; 1: line; ...
+  double high_pass_Hz = 0, low_pass_Hz = 0;             ///< 0: none
+  int filter_order = 4;                                 ///< of the two passes together: even
+  int decimate = 1;
+  double reject_V = 0;  ///< largest magnitude in the average reference; 0: no limit
+  double flat_V = 0;    ///< peak-to-peak below it is flat; 0: no limit
+  double step_V = 0;    ///< largest difference of neighbouring samples; 0: no limit
+  BadLeadOptions leads;
+};
+
+/// What became of one event.
+struct TrialRecord {
+  std::size_t event_row = 0;  ///< row of the events table
+  double onset_s = 0;
+  std::string condition;
+  bool kept = false;
+  std::string reason;  ///< "", "amplitude", "flat", "step", "outside the recording", "across a gap"
+  std::string channel;  ///< worst lead, where a lead is the reason
+  double figure = 0;    ///< its value, V; NaN where none
+};
+
+/// Trials of one participant. data_V: #channels by (#times * #trials), trial after trial, in the
+/// recording's reference (restored `zero` channels included). times: s.
+struct Trials {
+  Labels channels;
+  Eigen::VectorXd times_s;
+  Eigen::MatrixXd data_V;
+  Labels conditions;                   ///< names, in the order asked for
+  std::vector<std::size_t> condition;  ///< of each trial: place in `conditions`
+  std::vector<std::size_t> event_row;  ///< of each trial
+  std::vector<TrialRecord> records;    ///< of every chosen event, in order of onset
+  LeadCheck leads;                     ///< what was found of each lead, bad ones included
+  bool baseline_removed = false;       ///< each trial's mean over baseline_s is zero
+  std::pair<double, double> baseline_s{0, 0};
+  Labels notes;  ///< overlapping epochs, onset jitter, ...
+
+  Eigen::Index count() const { return static_cast<Eigen::Index>(condition.size()); }
+  auto trial(Eigen::Index k) const { return data_V.middleCols(k * times_s.size(), times_s.size()); }
+  Eigen::Index count_of(std::size_t place) const;
+};
+
+/// Positions of a list of leads: standard, or out of the participant's table.
+using MontageOf = std::function<Montage(const Labels&)>;
+
+/// Cuts and cleans. `edits` as for averages, by the recording's cleaned names; a name of `drop`
+/// that the recording sets aside already is no error. Memory: the epochs, plus one channel's
+/// segment when filters are on. Errors (InputError): an unknown events column (lists those there),
+/// a condition without events (lists the column's values with counts) or without trials left (says
+/// why they went), an epoch of no sample, filters above half the sampling rate or (low-pass) above
+/// a third of the decimated rate, a decimation without low-pass, fewer than 8 leads left. Events of
+/// which the epoch is not wholly inside a segment are recorded as such. An event chosen by two
+/// conditions is an error. Overlapping epochs are noted.
+Trials cut_trials(const Recording& recording, const ChannelEdits& edits,
+                  const std::vector<EventChoice>& choices, const TrialOptions& options,
+                  const MontageOf& montage_of);
+
+/// Average of a condition. trim 0: the mean. Else at each channel and sample the share `trim` of
+/// trials is left out at each end (Stuart & Ord: trimmed mean), and `trials` is the count times the
+/// efficiency of that mean for normal noise,
+///   1/efficiency = [ (1-2g) - 2 z phi(z) + 2 g z^2 ] / (1-2g)^2,  z = the 1-g quantile.
+/// floor(g n) trials are left out at each end; g in the formula is that number over n.
+Average average_trials(const Trials& trials, std::size_t condition, double trim);
+
+/// Share of one condition's trials beyond which a peak of its average is biased against another's:
+/// a warning when the largest and smallest counts differ by more than a factor 1.5 (the maximum of
+/// noise grows as its standard deviation, 1/sqrt(n): by 22 % at 1.5). Empty: none.
+std::string count_warning(const std::vector<Average>& averages);
+
+}  // namespace headwater
