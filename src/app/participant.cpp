@@ -3,12 +3,18 @@
 #include <headwater/base/error.hpp>
 #include <headwater/base/table.hpp>
 #include <headwater/base/units.hpp>
+#include <headwater/signal/reference.hpp>
 
 #include <fmt/core.h>
 
 #include <algorithm>
 
 namespace headwater {
+
+const std::vector<PartLeftOut>& ParticipantData::parts_of(std::size_t contrast) const {
+  static const std::vector<PartLeftOut> none;
+  return contrast < parts.size() ? parts[contrast] : none;
+}
 
 TrialCounts read_counts(const Experiment& experiment) {
   if (!experiment.counts_table) return TrialCounts(experiment.trials_each);
@@ -63,6 +69,32 @@ void check_same_times(const std::vector<const ParticipantData*>& participants) {
 
 }  // namespace
 
+namespace {
+
+/// The mean contrast without each participant in turn: from the mean and the one left out.
+std::vector<PartLeftOut> without_each(const std::vector<ContrastWaveform>& contrasts,
+                                      const Labels& names, const ContrastWaveform& mean,
+                                      const std::vector<TimeWindow>& windows) {
+  std::vector<PartLeftOut> parts;
+  const double people = static_cast<double>(contrasts.size());
+  if (contrasts.size() < 3) return parts;  // what is left must still be a mean
+  for (std::size_t s = 0; s < contrasts.size(); ++s) {
+    const auto rows = match_labels(mean.channels, contrasts[s].channels, names[s]);
+    const Eigen::MatrixXd own =
+        average_reference(mean.data_V.rows()) * contrasts[s].data_V(rows, Eigen::all);
+    const Eigen::MatrixXd rest = (people * mean.data_V - own) / (people - 1);
+    PartLeftOut part{"participant", names[s], {}};
+    for (const auto& window : windows) {
+      const auto samples = samples_in(mean.times_s, window);
+      part.windows_V.push_back(rest.middleCols(samples.first, samples.count));
+    }
+    parts.push_back(std::move(part));
+  }
+  return parts;
+}
+
+}  // namespace
+
 ParticipantData mean_participant(const Experiment& experiment,
                                  const std::vector<const ParticipantData*>& participants,
                                  ForwardModels& forward_models) {
@@ -77,12 +109,18 @@ ParticipantData mean_participant(const Experiment& experiment,
   }
   std::vector<NoiseCovariance> noise;
   noise.reserve(participants.size());
-  for (const auto* participant : participants) noise.push_back(participant->noise);
+  Labels names;
+  for (const auto* participant : participants) {
+    noise.push_back(participant->noise);
+    names.push_back(participant->name);
+  }
   for (std::size_t k = 0; k < experiment.contrasts.size(); ++k) {
     std::vector<ContrastWaveform> contrasts;
     contrasts.reserve(participants.size());
     for (const auto* participant : participants) contrasts.push_back(participant->contrasts[k]);
     mean.contrasts.push_back(mean_contrast(contrasts, noise));
+    mean.parts.push_back(without_each(contrasts, names, mean.contrasts.back(),
+                                      windows_of(experiment, experiment.contrasts[k].name)));
   }
   const Labels& channels = mean.averages[0].channels;
   Montage montage{channels, Eigen::Matrix3Xd::Zero(3, static_cast<Eigen::Index>(channels.size()))};

@@ -146,6 +146,8 @@ void ResultsFolder::write_dipoles(const std::string& participant, const Contrast
                                   const std::vector<WindowDipoles>& dipoles) const {
   write_table(file(participant, contrast.name, "", "", "dipoles.tsv"),
               dipole_table(forward, contrast, dipoles));
+  write_table(file(participant, contrast.name, "", "", "influence.tsv"),
+              influence_table(forward, dipoles));
 }
 
 void ResultsFolder::write_noise(const std::string& participant,
@@ -180,6 +182,7 @@ std::vector<SummaryRow> ResultsFolder::write_located(
   write_table(path("", "regions.tsv"), region_table(forward, located));
   write_table(path("", "regionCourses.tsv"), region_course_table(forward, contrast, located));
   write_table(path("", "indices.tsv"), index_table(located));
+  write_table(path("", "influence.tsv"), influence_table(forward, located));
   write_json(path("", "fit.json"), fit_json(participant, contrast, located));
   if (forward.grid.is_lattice()) {
     for (const auto& window : located.windows) {

@@ -15,6 +15,9 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
 OutputTable region_table(const ForwardModel& forward, const LocatedContrast& located);
 OutputTable region_course_table(const ForwardModel& forward, const ContrastWaveform& contrast,
                                 const LocatedContrast& located);
+/// What becomes of the answer without each lead, block of trials or participant.
+OutputTable influence_table(const ForwardModel& forward, const std::vector<WindowDipoles>& dipoles);
+OutputTable influence_table(const ForwardModel& forward, const LocatedContrast& located);
 OutputTable index_table(const LocatedContrast& located);
 Json fit_json(const ParticipantData& participant, const ContrastWaveform& contrast,
               const LocatedContrast& located);

@@ -12,13 +12,23 @@ namespace headwater {
 /// Name and folder of the mean over participants.
 inline constexpr const char* kMeanName = "mean";
 
+/// A contrast with part of the data left out: one matrix (M by T_w, as the contrast's data) for
+/// each of the contrast's windows.
+struct PartLeftOut {
+  std::string kind, name;  ///< "trials", "block 2 (trials 21 to 40)"; "participant", "sub-03"
+  std::vector<Eigen::MatrixXd> windows_V;
+};
+
 struct ParticipantData {
   std::string name;
   std::vector<Average> averages;            ///< one for each condition, in the experiment's order
   NoiseCovariance noise;                    ///< of a single trial
   std::vector<ContrastWaveform> contrasts;  ///< in the experiment's order
+  std::vector<std::vector<PartLeftOut>> parts;  ///< of each contrast; empty: nothing to leave out
   std::shared_ptr<const ForwardModel> forward;
   std::vector<std::string> inputs;  ///< files read, absolute
+
+  const std::vector<PartLeftOut>& parts_of(std::size_t contrast) const;
 };
 
 /// Reads the averages of all conditions, edits and checks channels, estimates the noise, forms the
