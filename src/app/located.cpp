@@ -91,6 +91,8 @@ std::optional<GramSpectrum> Locator::Engine::estimate(const Experiment& experime
     const Eigen::MatrixXd covariance =
         experiment.lcmv_table
             ? read_noise_table(*experiment.lcmv_table, subspace.channels, 0.0).single_trial_V2
+        : participant.data_covariance_V2.size() > 0
+            ? participant.data_covariance_V2
             : pooled_data_covariance(participant.averages, experiment.lcmv_from_s,
                                      experiment.lcmv_to_s);
     lcmv = std::make_unique<Lcmv>(subspace, covariance, participant.forward->outward,
