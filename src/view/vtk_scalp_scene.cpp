@@ -2,9 +2,10 @@
 #include "view/vtk_scalp_scene.hpp"
 
 #include "view/colour.hpp"
-#include "view/scalp_spline.hpp"
+#include "view/flat_map.hpp"
 
 #include <headwater/base/units.hpp>
+#include <headwater/signal/spherical_spline.hpp>
 
 #include <vtkCellArray.h>
 #include <vtkContourFilter.h>
@@ -30,7 +31,7 @@ constexpr int kRings = 72, kSpokes = 240;
 /// The map on rings about the vertex: point 0, then ring by ring.
 struct FlatMap {
   std::vector<Eigen::Vector2d> places;  // flat_position
-  std::vector<double> values;
+  Eigen::VectorXd values;
   std::vector<Eigen::Vector3i> triangles;
 };
 
@@ -62,7 +63,6 @@ std::vector<double> map_edge(const SourcePicture& picture) {
 }
 
 FlatMap flat_map(const SourcePicture& picture, const std::vector<double>& edge) {
-  const ScalpSpline spline(picture.directions, picture.scalp_uV);
   FlatMap map;
   map.places.emplace_back(0, 0);
   const auto at = [](int ring, int spoke) {
@@ -78,7 +78,10 @@ FlatMap flat_map(const SourcePicture& picture, const std::vector<double>& edge) 
       map.triangles.emplace_back(inner, outer, next);
       if (ring > 1) map.triangles.emplace_back(inner, next, inner_next);
     }
-  for (const auto& place : map.places) map.values.push_back(spline(unflattened(place)));
+  Eigen::Matrix3Xd directions(3, static_cast<Eigen::Index>(map.places.size()));
+  for (std::size_t k = 0; k < map.places.size(); ++k)
+    directions.col(static_cast<Eigen::Index>(k)) = unflattened(map.places[k]);
+  map.values = spline_interpolation(picture.directions, directions) * picture.scalp_uV;
   return map;
 }
 
@@ -89,7 +92,7 @@ Canvas::Points isolines(const FlatMap& map, const std::vector<double>& levels) {
   vtkNew<vtkDoubleArray> scalars;
   for (std::size_t k = 0; k < map.places.size(); ++k) {
     points->InsertNextPoint(map.places[k].x(), map.places[k].y(), 0);
-    scalars->InsertNextValue(map.values[k]);
+    scalars->InsertNextValue(map.values(static_cast<Eigen::Index>(k)));
   }
   vtkNew<vtkCellArray> cells;
   for (const auto& t : map.triangles) {

@@ -11,7 +11,18 @@
 // A lead is bad when |deviation z| > limit, or correlation < limit, or spline z > limit and spline
 // error > 1, or marked > limit. The worst lead is taken out first and the figures of the others are
 // made anew (a bad lead spoils the average reference and its neighbours' predictions), until none
-// is left or a quarter of the leads is bad (then a note says that the recording is poor).
+// is left or a quarter of the leads is bad (then a note says that the recording is poor). The worst
+// passes a limit by the largest factor; of a correlation that is (1 - correlation) / (1 - limit).
+//
+// Each trial's mean over time is taken off every lead first: offsets between leads are no signal.
+// Robust z: (value - median) / (1.4826 MAD), the latter at least 0.1, so that leads that are alike
+// to 10 % are not told apart. Average reference and predictions are those of the leads not bad by
+// then. In the end each lead that was taken out is looked at once more, as one of the good leads
+// and itself: these are its figures, and if it is not bad by them (a bad neighbour was to blame,
+// and is out) it comes back. A lead without neighbours has no correlation (NaN) and is not judged
+// by it. At most 200 trials are looked at, evenly spread (marks: all). A pass costs 2 M^3
+// operations for each of them. A lead without any signal looks, in the average reference, like one
+// in which sources cancel: marks of flatness find it for certain, the figures mostly.
 #pragma once
 #include <headwater/signal/electrodes.hpp>
 

@@ -23,7 +23,9 @@ class ZeroPhaseFilter {
   struct Section {
     double b0, b1, b2, a1, a2;  // a0 = 1
   };
+  void pass(std::vector<double>& signal) const;  // forwards, from the steady state
   std::vector<Section> sections_;
+  bool passes_constant_ = true;
   double sampling_Hz_ = 0;
   double settling_samples_ = 0;
 };
