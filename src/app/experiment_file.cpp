@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Over 400 lines: one method for each section of the file.
 #include "app/key_reader.hpp"
+#include "app/trial_keys.hpp"
 
 #include <headwater/app/experiment_file.hpp>
 #include <headwater/base/error.hpp>
@@ -35,6 +36,7 @@ class Assembly {
     out_.seed = static_cast<std::uint64_t>(keys_.number("seed"));
     read_averages();
     read_conditions();
+    read_trial_keys(keys_, out_, folder_);
     read_participants();
     read_contrasts();
     read_windows();
@@ -83,7 +85,7 @@ class Assembly {
     for (const auto* entry : keys_.entries("conditions")) {
       Condition condition{text_of(*entry, "name"), {}};
       for (const auto& [key, value] : std::get<TomlValue::Table>(entry->value))
-        if (key != "name" && value.is_text())
+        if (key != "name" && key != "events" && value.is_text())
           condition.factors[key] = std::get<std::string>(value.value);
       for (const auto& other : out_.conditions)
         if (other.name == condition.name)
@@ -91,7 +93,8 @@ class Assembly {
       out_.conditions.push_back(condition);
     }
     if (out_.conditions.empty())
-      keys_.problem(nullptr, "no [[conditions]]: name at least one, as in the file names.");
+      keys_.problem(nullptr,
+                    "no [[conditions]]: name at least one, as in the file names or the events.");
   }
 
   void read_participants() {
@@ -123,22 +126,27 @@ class Assembly {
       if (name == "mean" || name == "n/a" || name.empty() || name[0] == '.' ||
           name.find('/') != std::string::npos)
         keys_.problem(
-            keys_.find(keys_.has("participants.table") ? "participants.table" : "averages.file"),
+            keys_.find(keys_.has("participants.table") ? "participants.table" : files_key()),
             fmt::format("'{}' cannot name a participant: it would not make a folder of its own "
                         "('mean' is the mean over participants). Rename it, or name it in "
                         "participants.leave_out.",
                         name));
     if (out_.participants.empty() && keys_.problems().empty())
-      keys_.problem(keys_.find("averages.file"),
-                    fmt::format("no participant: no file fits {}.", out_.averages_pattern));
+      keys_.problem(keys_.find(files_key()),
+                    fmt::format("no participant: no file fits {}.", files_pattern()));
+  }
+
+  std::string files_key() const { return out_.has_trials() ? "trials.recording" : "averages.file"; }
+  const std::string& files_pattern() const {
+    return out_.has_trials() ? out_.trials.recording_pattern : out_.averages_pattern;
   }
 
   /// Participants of whom a file of the first condition is there. {participant} may stand in one
   /// component of the path more than once, or in several.
   void find_participants() {
-    if (out_.averages_pattern.empty() || out_.conditions.empty()) return;
+    if (files_pattern().empty() || out_.conditions.empty()) return;
     const std::string pattern =
-        replace_all(out_.averages_pattern, "{condition}", out_.conditions[0].name);
+        replace_all(files_pattern(), "{condition}", out_.conditions[0].name);
     const auto at = pattern.find("{participant}");
     if (at == std::string::npos) return;
     const auto slash = pattern.rfind('/', at);
@@ -160,11 +168,20 @@ class Assembly {
 
   void read_contrasts() {
     for (const auto* entry : keys_.entries("contrasts")) {
-      ContrastPlan plan{text_of(*entry, "name"), {}};
+      ContrastPlan plan{text_of(*entry, "name"), {}, text_of(*entry, "predictor")};
       const auto *weights = entry->find("weights"), *effect = entry->find("effect");
-      if ((weights != nullptr) == (effect != nullptr)) {
+      const auto* predictor = entry->find("predictor");
+      if ((weights != nullptr) + (effect != nullptr) + (predictor != nullptr) != 1) {
         keys_.problem(entry,
-                      fmt::format("contrast '{}' needs either weights or an effect.", plan.name));
+                      fmt::format("contrast '{}' needs one of weights, an effect or a predictor.",
+                                  plan.name));
+      } else if (predictor) {
+        if (!find_label(out_.trials.predictors, plan.predictor))
+          keys_.problem(predictor,
+                        fmt::format("contrast '{}' asks for predictor '{}', which is not one of "
+                                    "regression.predictors.{}",
+                                    plan.name, plan.predictor,
+                                    did_you_mean(plan.predictor, out_.trials.predictors)));
       } else if (weights && weights->is_table()) {
         read_weights(*weights, plan);
       } else if (effect && effect->is_table()) {
@@ -179,7 +196,8 @@ class Assembly {
     }
     if (keys_.has("contrasts")) return;
     for (const auto& condition : out_.conditions)
-      out_.contrasts.push_back({condition.name, {{condition.name, 1.0}}});
+      out_.contrasts.push_back({condition.name, {{condition.name, 1.0}}, ""});
+    for (const auto& name : out_.trials.predictors) out_.contrasts.push_back({name, {}, name});
   }
 
   void read_weights(const TomlValue& weights, ContrastPlan& plan) {
@@ -253,8 +271,14 @@ class Assembly {
                         "10-5 names).",
                         out_.positions));
     }
-    out_.position_space =
-        fold_case(keys_.text("montage.space")) == "mni" ? PositionSpace::mni : PositionSpace::head;
+    const std::string space = fold_case(keys_.text("montage.space"));
+    out_.position_space = space == "mni"   ? CapSpace::mni
+                          : space == "own" ? CapSpace::own
+                                           : CapSpace::head;
+    if (space == "own" && positions == "standard")
+      keys_.problem(keys_.find("montage.space"),
+                    "'montage.space' is \"own\", but the positions are standard: name a table in "
+                    "montage.positions.");
     out_.edits.drop = keys_.texts("montage.drop");
     out_.edits.zero = keys_.texts("montage.zero");
     if (const auto* rename = keys_.find("montage.rename"); rename && rename->is_table())
@@ -306,7 +330,15 @@ class Assembly {
 
   void read_noise() {
     const std::string from = fold_case(keys_.text("noise.from"));
-    if (from == "residual") {
+    out_.noise.oas =
+        keys_.has("noise.shrinkage") && fold_case(keys_.text("noise.shrinkage")) == "oas";
+    if (from == "trials" || (out_.has_trials() && !keys_.has("noise.from"))) {
+      out_.noise.from = NoiseOptions::From::trials;
+      if (!out_.has_trials())
+        keys_.problem(keys_.find("noise.from"),
+                      "'noise.from' is \"trials\", but there are none: give "
+                      "[trials] with recordings.");
+    } else if (from == "residual") {
       out_.noise.from = NoiseOptions::From::residual;
       if (!keys_.has("noise.after_ms"))
         keys_.problem(keys_.find("noise.from"),
@@ -358,6 +390,12 @@ class Assembly {
     if (out_.lcmv_from_s >= out_.lcmv_to_s)
       keys_.problem(keys_.find(keys_.has("lcmv.to_ms") ? "lcmv.to_ms" : "lcmv.from_ms"),
                     "'lcmv.to_ms' must lie after 'lcmv.from_ms'.");
+    const std::string data_from = fold_case(keys_.text("lcmv.from"));
+    out_.lcmv_from_trials = out_.has_trials() && data_from != "averages";
+    if (data_from == "trials" && !out_.has_trials())
+      keys_.problem(keys_.find("lcmv.from"),
+                    "'lcmv.from' is \"trials\", but there are none: give "
+                    "[trials] with recordings.");
     out_.lcmv_table = optional_path("lcmv.table");
     out_.lcmv.regularisation = keys_.number("lcmv.regularisation");
     out_.lcmv.mirror_paired = keys_.flag("lcmv.mirror_paired");

@@ -37,15 +37,59 @@ SphereFit centred_sphere(const Montage& table, const std::string& path) {
         "{}: the sphere through the electrodes has its centre at ({:.0f}, {:.0f}, {:.0f}) mm, "
         "{:.0f} mm from "
         "the origin of the head frame: expected within {:.0f} mm. Is the table in MNI space "
-        "(montage.space = \"MNI\"), or about another origin? Shift it so that the centre is the "
-        "origin.",
+        "(montage.space = \"MNI\"), or digitised in a frame of its own (montage.space = \"own\", "
+        "which fits it to the head)?",
         path, fit.centre.x() / kMillimetre, fit.centre.y() / kMillimetre,
         fit.centre.z() / kMillimetre, fit.centre.norm() / kMillimetre,
         kLargestOffset / kMillimetre));
   return fit;
 }
 
+/// What makes a cap unusable or doubtful, said in words.
+void judge_fit(ParticipantCap& cap, const CapFit& fit) {
+  if (fit.mirrored || fit.reversed)
+    throw InputError(fmt::format(
+        "{}: {} seem exchanged: the positions fit the standard cap far better that way. Expected "
+        "RAS axes (x to the right, y forwards). Mend the table, or the labels of its electrodes.",
+        cap.source, fit.mirrored ? "left and right" : "nasion and inion"));
+  for (const auto& outlier : fit.outliers)
+    cap.notes.push_back(fmt::format(
+        "electrode {} lies {:.0f} degrees from where its name belongs and {:.0f} mm off the sphere",
+        outlier.name, outlier.angle_deg, outlier.off_sphere_m / kMillimetre));
+  cap.notes.insert(cap.notes.end(), fit.notes.begin(), fit.notes.end());
+}
+
 }  // namespace
+
+ParticipantCap read_participant_cap(const Experiment& experiment, const std::string& participant) {
+  ParticipantCap cap;
+  if (experiment.positions == "standard") {
+    cap.source = "standard positions";
+    return cap;
+  }
+  const auto path = fill_pattern(experiment.positions, participant, "");
+  cap.source = path.string();
+  if (experiment.position_space == CapSpace::own) {
+    const DigitisedCap digitised = read_cap(path);
+    cap.notes = digitised.notes;
+    cap.fit = fit_cap(digitised);
+    judge_fit(cap, *cap.fit);
+    cap.table = cap.fit->montage;
+    cap.sphere = cap.fit->sphere;
+    return cap;
+  }
+  cap.table = read_positions(
+      path, experiment.position_space == CapSpace::mni ? PositionSpace::mni : PositionSpace::head);
+  cap.sphere = centred_sphere(cap.table, cap.source);
+  return cap;
+}
+
+Montage montage_of(const Experiment& experiment, const ParticipantCap& cap,
+                   const Labels& channels) {
+  const auto& radii = experiment.head.radii_m;
+  if (cap.table.labels.empty()) return standard_montage(channels, radii[radii.size() - 1]);
+  return select_positions(cap.table, channels, cap.source);
+}
 
 std::shared_ptr<const ForwardModel> build_forward_model(const Experiment& experiment,
                                                         const Montage& montage,
@@ -71,17 +115,6 @@ std::shared_ptr<const ForwardModel> build_forward_model(const Experiment& experi
   model->outward = grid.head_m.colwise().normalized();
   model->gain = compute_gain(model->head, montage.positions, grid.head_m);
   return model;
-}
-
-std::shared_ptr<const ForwardModel> ForwardModels::of(const std::string& participant,
-                                                      const Labels& channels) {
-  if (experiment_->positions == "standard") {
-    const auto& radii = experiment_->head.radii_m;
-    return of(standard_montage(channels, radii[radii.size() - 1]), SphereFit{});
-  }
-  const auto path = fill_pattern(experiment_->positions, participant, "");
-  const Montage table = read_positions(path, experiment_->position_space);
-  return of(select_positions(table, channels, path.string()), centred_sphere(table, path.string()));
 }
 
 std::shared_ptr<const ForwardModel> ForwardModels::of(const Montage& montage,

@@ -85,6 +85,8 @@ bool has_type(const TomlValue& value, KeyType type) {
       return all_members([](const TomlValue& v) {
         return is_text_list(v) && std::get<TomlValue::Array>(v.value).size() == 2;
       });
+    case T::list_map:
+      return all_members(is_text_list);
     case T::number_or_text:
       return value.is_number() || value.is_text();
     case T::rule: {
@@ -103,7 +105,7 @@ TomlValue make_defaults() {
   std::string section;
   for (const auto& record : key_records()) {
     if (record.name.find("[]") != std::string::npos || record.standard.empty() ||
-        record.standard == "required")
+        record.standard.starts_with("required"))
       continue;
     if (const auto parent = parent_of(record.name); parent != section) {
       document += "[" + parent + "]\n";
@@ -177,7 +179,7 @@ void KeyReader::check_table(const TomlValue& table, const std::string& prefix) {
 
 void KeyReader::check_required(const TomlValue& table, const std::string& prefix) {
   for (const auto& record : key_records())
-    if (record.standard == "required" && parent_of(record.name) == prefix) {
+    if (record.standard.starts_with("required") && parent_of(record.name) == prefix) {
       const std::string name = record.name.substr(prefix.empty() ? 0 : prefix.size() + 1);
       if (!table.find(name))
         problem(&table, fmt::format("'{}' is missing: {}", record.name, record.meaning));
@@ -195,7 +197,7 @@ void KeyReader::check_number(const TomlValue& value, const KeyRecord& record) {
 
 void KeyReader::check_text(const TomlValue& value, const KeyRecord& record) {
   const auto& text = std::get<std::string>(value.value);
-  if (text.empty() && record.standard == "required")
+  if (text.empty() && record.standard.starts_with("required"))
     problem(&value, fmt::format("'{}' is empty: {}", record.name, record.meaning));
   if (record.choices.empty()) return;
   if (!find_label_any_case(record.choices, text))

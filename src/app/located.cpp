@@ -1,4 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "app/influence.hpp"
+
 #include <headwater/app/located.hpp>
 #include <headwater/base/error.hpp>
 #include <headwater/inverse/eloreta.hpp>
@@ -89,6 +91,8 @@ std::optional<GramSpectrum> Locator::Engine::estimate(const Experiment& experime
     const Eigen::MatrixXd covariance =
         experiment.lcmv_table
             ? read_noise_table(*experiment.lcmv_table, subspace.channels, 0.0).single_trial_V2
+        : participant.data_covariance_V2.size() > 0
+            ? participant.data_covariance_V2
             : pooled_data_covariance(participant.averages, experiment.lcmv_from_s,
                                      experiment.lcmv_to_s);
     lcmv = std::make_unique<Lcmv>(subspace, covariance, participant.forward->outward,
@@ -124,9 +128,11 @@ std::vector<WindowDipoles> Locator::dipoles(std::size_t place,
   if (!engine.scan)
     engine.scan = std::make_unique<DipoleScan>(engine.subspace, participant_->forward->grid);
   std::vector<WindowDipoles> result;
-  for (const auto& window : windows) {
-    WindowDipoles dipoles{window, samples_in(contrast.times_s, window), {}, {}};
+  const auto& parts = participant_->parts_of(place);
+  for (std::size_t w = 0; w < windows.size(); ++w) {
+    WindowDipoles dipoles{windows[w], samples_in(contrast.times_s, windows[w]), {}, {}, {}};
     const auto data = contrast.data_V.middleCols(dipoles.samples.first, dipoles.samples.count);
+    dipoles.influence = influence_on_dipoles(*participant_->forward, *engine.scan, data, parts, w);
     dipoles.mean = engine.scan->judge(data.rowwise().mean());
     for (Eigen::Index t = 0; t < data.cols(); ++t)
       dipoles.at_sample.push_back(engine.scan->judge(data.col(t)));
@@ -153,13 +159,15 @@ LocatedContrast Locator::locate(std::size_t place, const std::string& method,
   const PowerIndices indices(
       located.inverse, lobe_forms, engine.subspace.basis, contrast.noise_V2, forward.lobes,
       {400, experiment_->seed, participant_->name + " " + contrast.name + " " + method});
-  for (const auto& window : windows) {
-    LocatedWindow part{window, samples_in(contrast.times_s, window), {}, {}, {}, {}};
+  for (std::size_t w = 0; w < windows.size(); ++w) {
+    LocatedWindow part{windows[w], samples_in(contrast.times_s, windows[w]), {}, {}, {}, {}, {}};
     part.map = window_map(located.estimate.amplitude, part.samples);
     part.peaks = find_peaks(forward.neighbours, part.map, located.estimate.amplitude,
                             contrast.times_s, part.samples);
     part.indices = indices.at(contrast.data_V, part.samples);
     const auto data = contrast.data_V.middleCols(part.samples.first, part.samples.count);
+    part.influence =
+        influence_on_map(forward, located.inverse, data, participant_->parts_of(place), w);
     const GramSpectrum& used = spectrum ? *spectrum : GramSpectrum{};
     if (spectrum) {
       const Eigen::MatrixXd z = spectrum_map(engine.subspace, used) * data;

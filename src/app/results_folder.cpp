@@ -91,6 +91,21 @@ void write_source_courses(const fs::path& base, const ContrastWaveform& contrast
   write_json(with_suffix(base, ".json"), note);
 }
 
+/// Values (#channels by #times, V) of a contrast's channels.
+OutputTable channel_table(const std::string& what, const ContrastWaveform& contrast,
+                          const Eigen::MatrixXd& values_V, bool full_precision) {
+  OutputTable table{what, {{"time_s", "Latency", "s"}}, {}};
+  for (const auto& channel : contrast.channels)
+    table.columns.push_back({channel, "Potential against the average of all channels", "uV"});
+  for (Eigen::Index t = 0; t < contrast.times_s.size(); ++t) {
+    std::vector<std::string> row{format_number(contrast.times_s[t], full_precision ? 17 : 9)};
+    for (Eigen::Index m = 0; m < values_V.rows(); ++m)
+      row.push_back(format_number(values_V(m, t) / kMicrovolt, full_precision ? 17 : 6));
+    table.rows.push_back(std::move(row));
+  }
+  return table;
+}
+
 }  // namespace
 
 fs::path ResultsFolder::file(const std::string& participant, const std::string& contrast,
@@ -127,18 +142,35 @@ void ResultsFolder::write_forward(const ForwardModel& forward,
               positions_table("Electrodes", forward.montage.labels, forward.montage.positions));
 }
 
+void ResultsFolder::write_data_decisions(const ParticipantData& participant) const {
+  const auto path = [&](const std::string& suffix) {
+    return root_ / participant.name / fmt::format("{}_{}", participant.name, suffix);
+  };
+  if (!participant.leads.leads.empty()) write_table(path("leads.tsv"), lead_table(participant));
+  if (participant.cap.fit) write_json(path("cap.json"), cap_json(participant.cap));
+  if (!participant.trials) return;
+  write_table(path("trials.tsv"), trial_table(participant));
+  if (!participant.trials->regression.names.empty())
+    write_table(path("regression.tsv"), regression_table(participant));
+}
+
+void ResultsFolder::write_standard_error(const ParticipantData& participant,
+                                         const ContrastWaveform& contrast,
+                                         const std::string& predictor) const {
+  const auto& regression = participant.trials->regression;
+  const auto place = find_label(regression.names, predictor);
+  if (!place) return;
+  write_table(file(participant.name, contrast.name, "", "", "standardError.tsv"),
+              channel_table(
+                  "Standard error of the coefficients, from the residuals of the regression.",
+                  contrast, regression.standard_error_V[static_cast<std::size_t>(*place)], false));
+}
+
 void ResultsFolder::write_waveform(const std::string& participant, const ContrastWaveform& contrast,
                                    bool full_precision) const {
-  OutputTable table{"Contrast waveform, average reference.", {{"time_s", "Latency", "s"}}, {}};
-  for (const auto& channel : contrast.channels)
-    table.columns.push_back({channel, "Potential against the average of all channels", "uV"});
-  for (Eigen::Index t = 0; t < contrast.times_s.size(); ++t) {
-    std::vector<std::string> row{format_number(contrast.times_s[t], full_precision ? 17 : 9)};
-    for (Eigen::Index m = 0; m < contrast.data_V.rows(); ++m)
-      row.push_back(format_number(contrast.data_V(m, t) / kMicrovolt, full_precision ? 17 : 6));
-    table.rows.push_back(std::move(row));
-  }
-  write_table(file(participant, contrast.name, "", "", "waveform.tsv"), table);
+  write_table(file(participant, contrast.name, "", "", "waveform.tsv"),
+              channel_table("Contrast waveform, average reference.", contrast, contrast.data_V,
+                            full_precision));
 }
 
 void ResultsFolder::write_dipoles(const std::string& participant, const ContrastWaveform& contrast,
@@ -146,6 +178,8 @@ void ResultsFolder::write_dipoles(const std::string& participant, const Contrast
                                   const std::vector<WindowDipoles>& dipoles) const {
   write_table(file(participant, contrast.name, "", "", "dipoles.tsv"),
               dipole_table(forward, contrast, dipoles));
+  write_table(file(participant, contrast.name, "", "", "influence.tsv"),
+              influence_table(forward, dipoles));
 }
 
 void ResultsFolder::write_noise(const std::string& participant,
@@ -180,6 +214,7 @@ std::vector<SummaryRow> ResultsFolder::write_located(
   write_table(path("", "regions.tsv"), region_table(forward, located));
   write_table(path("", "regionCourses.tsv"), region_course_table(forward, contrast, located));
   write_table(path("", "indices.tsv"), index_table(located));
+  write_table(path("", "influence.tsv"), influence_table(forward, located));
   write_json(path("", "fit.json"), fit_json(participant, contrast, located));
   if (forward.grid.is_lattice()) {
     for (const auto& window : located.windows) {

@@ -120,6 +120,10 @@ std::string strongest_regions(const ForwardModel& forward,
   return text;
 }
 
+std::string joined_notes(const std::string& first, const std::string& second) {
+  return first + (first.empty() || second.empty() ? "" : "; ") + second;
+}
+
 std::string peak_note(const ForwardModel& forward, const DipoleVerdict& verdict,
                       const SourceOperator& inverse, Eigen::Index point) {
   if (!verdict.pair_preferred) return "";

@@ -48,4 +48,7 @@ std::string pair_note(const ForwardModel& forward, const DipoleVerdict& verdict)
 std::string peak_note(const ForwardModel& forward, const DipoleVerdict& verdict,
                       const SourceOperator& inverse, Eigen::Index point);
 
+/// Two notes as one, or "".
+std::string joined_notes(const std::string& first, const std::string& second);
+
 }  // namespace headwater

@@ -108,11 +108,14 @@ std::vector<SummaryRow> summarise(const ParticipantData& participant,
     };
     if (verdict.pair_preferred)
       add("mirrored pair", verdict.pair.point, verdict.pair.moment_Am.norm() / kNanoampereMetre,
-          "nA m", std::nan(""), pair_note(forward, verdict));
+          "nA m", std::nan(""),
+          joined_notes(pair_note(forward, verdict), dipoles[w].influence.note));
     if (!window.peaks.empty()) {
       const Peak& peak = window.peaks[0];
       add("peak", peak.point, peak.value / located.inverse.unit_in_SI, located.inverse.unit,
-          peak.latency_s, peak_note(forward, verdict, located.inverse, peak.point));
+          peak.latency_s,
+          joined_notes(peak_note(forward, verdict, located.inverse, peak.point),
+                       window.influence.note));
     }
   }
   return rows;

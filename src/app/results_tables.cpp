@@ -122,7 +122,7 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
         Row row{window.window.name, "mirrored pair", "1"};
         append_place(row, forward, point);
         append(row, {format_number(moment.norm() / kNanoampereMetre, 5), "nA m", "n/a",
-                     pair_note(forward, verdict)});
+                     joined_notes(pair_note(forward, verdict), dipoles[w].influence.note)});
         table.rows.push_back(row);
       };
       add(verdict.pair.partner, verdict.pair.partner_moment_Am);
@@ -132,7 +132,8 @@ OutputTable peak_table(const ForwardModel& forward, const LocatedContrast& locat
     for (const auto& peak : window.peaks) {
       Row row{window.window.name, "peak", std::to_string(++rank)};
       append_place(row, forward, peak.point);
-      const std::string note = peak_note(forward, verdict, inverse, peak.point);
+      const std::string note = joined_notes(peak_note(forward, verdict, inverse, peak.point),
+                                            rank == 1 ? window.influence.note : "");
       append(row, {format_number(peak.value / inverse.unit_in_SI, 6),
                    inverse.unit.empty() ? "n/a" : inverse.unit, ms(peak.latency_s),
                    note.empty() ? "n/a" : note});

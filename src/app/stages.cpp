@@ -5,6 +5,7 @@
 #include <headwater/base/units.hpp>
 
 #include <fmt/core.h>
+#include <fmt/ranges.h>
 
 #include <algorithm>
 #include <cmath>
@@ -45,12 +46,15 @@ std::vector<SummaryRow> locate_one(const Experiment& experiment, const Participa
                                    const ResultsFolder& results) {
   Locator locator(experiment, participant);
   std::vector<SummaryRow> rows;
+  results.write_data_decisions(participant);
   for (std::size_t c = 0; c < experiment.contrasts.size(); ++c) {
     const auto windows = windows_of(experiment, experiment.contrasts[c].name);
     if (windows.empty()) continue;
     const auto& contrast = participant.contrasts[c];
     const auto dipoles = locator.dipoles(c, windows);
     results.write_waveform(participant.name, contrast, experiment.write_courses);
+    if (participant.trials)
+      results.write_standard_error(participant, contrast, experiment.contrasts[c].predictor);
     results.write_dipoles(participant.name, contrast, *participant.forward, dipoles);
     if (experiment.write_courses) results.write_noise(participant.name, contrast);
     for (const auto& method : experiment.methods) {
@@ -160,14 +164,17 @@ OutputTable inspect_table(const InspectReport& report) {
   OutputTable table{"What was read of each participant.",
                     {{"participant_id", "Participant", ""},
                      {"channels", "Channels after edits, restored reference included", ""},
+                     {"bad_leads", "Leads taken for bad (of averages: that look bad)", ""},
                      {"samples", "Samples of an average", ""},
                      {"from_ms", "First latency", "ms"},
                      {"to_ms", "Last latency", "ms"},
                      {"trials", "Fewest and most single trials of a condition", ""},
+                     {"rejected", "Events of the conditions that gave no trial", ""},
                      {"noise_rank", "Rank of the noise covariance before shrinkage", ""},
                      {"noise_condition", "Condition number after shrinkage", ""},
                      {"shrinkage", "Weight of the scaled identity", ""},
                      {"noise_uV", "Root mean square noise of a single trial", "uV"},
+                     {"white", "Mean square of the averages' whitened baseline: about 1", ""},
                      {"sphere_mm", "Radius of the sphere through the positions", "mm"},
                      {"sphere_rms_mm", "Root mean square distance from it", "mm"},
                      {"sphere_offset_mm", "Distance of its centre from the frame's origin", "mm"}},
@@ -183,26 +190,71 @@ OutputTable inspect_table(const InspectReport& report) {
     const double variance =
         noise.single_trial_V2.trace() / static_cast<double>(noise.single_trial_V2.rows());
     const auto& sphere = participant.forward->sphere;
-    const bool fitted = sphere.radius > 0;
-    table.rows.push_back({participant.name, std::to_string(participant.averages[0].channels.size()),
-                          std::to_string(times.size()), format_fixed(times[0] / kMillisecond, 1),
-                          format_fixed(times[times.size() - 1] / kMillisecond, 1),
-                          fmt::format("{:g}-{:g}", fewest, most), std::to_string(noise.rank),
-                          format_number(noise.condition, 3), format_fixed(noise.shrinkage, 3),
-                          format_number(std::sqrt(variance) / kMicrovolt, 3),
-                          fitted ? format_fixed(sphere.radius / kMillimetre, 1) : "n/a",
-                          fitted ? format_fixed(sphere.rms / kMillimetre, 1) : "n/a",
-                          fitted ? format_fixed(sphere.centre.norm() / kMillimetre, 1) : "n/a"});
+    const auto of_sphere = [&](double metres) {
+      return sphere.radius > 0 ? format_fixed(metres / kMillimetre, 1) : "n/a";
+    };
+    const Labels bad = participant.leads.bad();
+    std::string rejected = "n/a";
+    if (participant.trials)
+      rejected = std::to_string(
+          std::count_if(participant.trials->records.begin(), participant.trials->records.end(),
+                        [](const TrialRecord& record) { return !record.kept; }));
+    table.rows.push_back(
+        {participant.name, std::to_string(participant.averages[0].channels.size()),
+         bad.empty() ? "none" : fmt::format("{}", fmt::join(bad, " ")),
+         std::to_string(times.size()), format_fixed(times[0] / kMillisecond, 1),
+         format_fixed(times[times.size() - 1] / kMillisecond, 1),
+         fmt::format("{:.4g}-{:.4g}", fewest, most), rejected, std::to_string(noise.rank),
+         format_number(noise.condition, 3), format_fixed(noise.shrinkage, 3),
+         format_number(std::sqrt(variance) / kMicrovolt, 3),
+         participant.whiteness.mean_square > 0 ? format_fixed(participant.whiteness.mean_square, 2)
+                                               : "n/a",
+         of_sphere(sphere.radius), of_sphere(sphere.rms), of_sphere(sphere.centre.norm())});
   }
   return table;
 }
 
-Json inspect_json(const Experiment& experiment, const InspectReport& report) {
+std::vector<LeadFinding> find_carriers(const Experiment& experiment, const InspectReport& report,
+                                       const StageOptions& options) {
+  Experiment quick = experiment;
+  quick.methods = {"sloreta"};
+  std::vector<const ParticipantData*> people;
+  for (const auto& participant : report.participants) people.push_back(&participant);
+  std::optional<ParticipantData> mean;
+  if (people.size() > 1 && wanted(options.participants, kMeanName))
+    guarded(kMeanName, [&] {
+      ForwardModels forward_models(experiment);
+      mean = mean_participant(experiment, people, forward_models);
+    });
+  if (mean) people.push_back(&*mean);
+  std::vector<std::vector<LeadFinding>> found(people.size());
+  parallel_for(people.size(), options.jobs, [&](std::size_t i) {
+    guarded(people[i]->name, [&] {
+      Locator locator(quick, *people[i]);
+      for (std::size_t c = 0; c < experiment.contrasts.size(); ++c) {
+        const auto windows = windows_of(experiment, experiment.contrasts[c].name);
+        if (windows.empty()) continue;
+        for (const auto& window : locator.locate(c, "sloreta", windows).windows)
+          if (!window.influence.carriers.empty())
+            found[i].push_back({people[i]->name, experiment.contrasts[c].name, window.window.name,
+                                window.influence.carriers, window.influence.note});
+      }
+    });
+  });
+  std::vector<LeadFinding> all;
+  for (auto& part : found) all.insert(all.end(), part.begin(), part.end());
+  return all;
+}
+
+Json inspect_json(const Experiment& experiment, const InspectReport& report,
+                  const std::vector<LeadFinding>& findings) {
   const OutputTable table = inspect_table(report);
   Json people = Json::array();
-  for (const auto& row : table.rows) {
+  for (std::size_t i = 0; i < table.rows.size(); ++i) {
     Json entry = Json::object();
-    for (std::size_t k = 0; k < row.size(); ++k) entry.set(table.columns[k].name, row[k]);
+    for (std::size_t k = 0; k < table.columns.size(); ++k)
+      entry.set(table.columns[k].name, table.rows[i][k]);
+    entry.set("notes", report.participants[i].notes);
     people.push(entry);
   }
   Json failures = Json::array();
@@ -211,18 +263,33 @@ Json inspect_json(const Experiment& experiment, const InspectReport& report) {
     entry.set("participant_id", failure.participant).set("reason", failure.reason);
     failures.push(entry);
   }
+  Json carrying = Json::array();
+  for (const auto& finding : findings) {
+    Json entry = Json::object();
+    entry.set("participant_id", finding.participant)
+        .set("contrast", finding.contrast)
+        .set("window", finding.window)
+        .set("carriers", finding.carriers)
+        .set("note", finding.note);
+    carrying.push(entry);
+  }
   Json contrasts = Json::array();
   for (const auto& plan : experiment.contrasts) {
     Json weights = Json::object();
     for (const auto& weight : plan.weights) weights.set(weight.condition, weight.weight);
     Json entry = Json::object();
-    entry.set("name", plan.name).set("weights", weights);
+    entry.set("name", plan.name);
+    if (plan.predictor.empty())
+      entry.set("weights", weights);
+    else
+      entry.set("predictor", plan.predictor);
     contrasts.push(entry);
   }
   Json json = Json::object();
   json.set("title", experiment.title)
       .set("participants", people)
       .set("contrasts", contrasts)
+      .set("carriers", carrying)
       .set("failures", failures);
   return json;
 }

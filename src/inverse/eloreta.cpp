@@ -94,6 +94,7 @@ SourceOperator Eloreta::at(double lambda, double noise_scale) {
   result.lambda = lambda;
   result.map = map_;
   factor.matrixL().solveInPlace(result.map);
+  result.precision.noalias() = result.map.transpose() * result.map;
   result.kernel = weighted_;
   factor.matrixL().solveInPlace(result.kernel);
   return result;

@@ -9,6 +9,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 #include <map>
 #include <stdexcept>
 
@@ -90,7 +91,29 @@ std::vector<Comparison> comparisons(
   return result;
 }
 
+/// Regions that enter an index.
+bool counts(const Region& region) {
+  return !region.lobe.empty() && region.side != Side::midline && !region.points.empty();
+}
+
 }  // namespace
+
+std::vector<PowerIndex> index_values(const Eigen::VectorXd& power,
+                                     const std::vector<Region>& lobes) {
+  std::map<std::pair<std::string, Side>, RegionPower> powers;
+  std::vector<std::string> names;
+  for (const auto& region : lobes) {
+    if (!counts(region)) continue;
+    powers[{region.lobe, region.side}] = {static_cast<double>(region.points.size()),
+                                          power(region.points).mean(), Eigen::RowVectorXd()};
+    if (region.side == Side::left) names.push_back(region.lobe);
+  }
+  constexpr double kNone = std::numeric_limits<double>::quiet_NaN();
+  std::vector<PowerIndex> indices;
+  for (const auto& [name, more, less] : comparisons(powers, names))
+    indices.push_back({name, ratio(more.quiet, less.quiet), kNone, kNone});
+  return indices;
+}
 
 PowerIndices::PowerIndices(const SourceOperator& inverse, const std::vector<Eigen::MatrixXd>& forms,
                            const Eigen::MatrixXd& basis, const Eigen::MatrixXd& noise_V2,
@@ -100,7 +123,7 @@ PowerIndices::PowerIndices(const SourceOperator& inverse, const std::vector<Eige
   if (forms.size() != lobes.size()) throw std::logic_error("PowerIndices: a form for each lobe");
   for (std::size_t k = 0; k < lobes.size(); ++k) {
     const auto& region = lobes[k];
-    if (region.lobe.empty() || region.side == Side::midline || region.points.empty()) continue;
+    if (!counts(region)) continue;
     const auto points = static_cast<double>(region.points.size());
     forms_.push_back({region.lobe, region.side, points, forms[k] / points});
   }

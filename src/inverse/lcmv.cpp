@@ -138,6 +138,7 @@ SourceOperator Lcmv::at(double noise_scale) const {
   result.method = "lcmv";
   result.map = map_;
   result.kernel = kernel_;
+  result.precision.noalias() = map_.transpose() * map_;
   result.pair_blind = !options_.mirror_paired;
   result.lambda = std::numeric_limits<double>::quiet_NaN();
   if (options_.output == LcmvOptions::Output::unit_gain) {

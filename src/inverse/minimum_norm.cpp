@@ -32,6 +32,7 @@ SourceOperator MinimumNorm::at(double lambda, double noise_scale) const {
   result.map = map_;
   const Eigen::ArrayXd shrink = 1 / (spectrum_.values.array() + lambda * noise_scale);
   result.kernel = shrink.matrix().asDiagonal() * projected_;
+  result.precision.noalias() = map_.transpose() * shrink.matrix().asDiagonal() * map_;
   return result;
 }
 

@@ -29,6 +29,7 @@ SourceOperator Sloreta::at(double lambda, double noise_scale) const {
   result.lambda = lambda;
   result.map = map_;
   const Eigen::VectorXd shrink = (spectrum_.values.array() + lambda * noise_scale).inverse();
+  result.precision.noalias() = map_.transpose() * shrink.asDiagonal() * map_;
   result.kernel.resize(projected_.rows(), projected_.cols());
   for (Eigen::Index column = 0; column < projected_.cols(); column += 3) {
     const auto block = projected_.middleCols<3>(column);

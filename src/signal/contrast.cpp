@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include "noise_parts.hpp"
 #include "problems.hpp"
 
 #include <headwater/base/error.hpp>
@@ -71,21 +72,6 @@ std::vector<std::string> effect_problems(const std::vector<Condition>& condition
           fmt::format("factor '{}': level '{}' minus itself is nothing.", part.factor, part.first));
   }
   return problems;
-}
-
-/// A single-trial covariance in the subspace of some of its channels. B C B' holds the covariance
-/// against the average reference; rows of the channels kept differ from any other reference by a
-/// constant, which the smaller basis removes.
-Eigen::MatrixXd covariance_of(const NoiseCovariance& noise, const Labels& channels) {
-  if (channels == noise.channels) return noise.single_trial_V2;
-  const auto kept = match_labels(channels, noise.channels, "Noise covariance");
-  const Eigen::MatrixXd wide =
-      reference_free_basis(static_cast<Eigen::Index>(noise.channels.size()));
-  Eigen::MatrixXd rows(static_cast<Eigen::Index>(kept.size()), wide.cols());
-  for (std::size_t i = 0; i < kept.size(); ++i)
-    rows.row(static_cast<Eigen::Index>(i)) = wide.row(kept[i]);
-  const Eigen::MatrixXd map = reference_free_basis(rows.rows()).transpose() * rows;
-  return map * noise.single_trial_V2 * map.transpose();
 }
 
 bool same_times(const Eigen::VectorXd& a, const Eigen::VectorXd& b) {

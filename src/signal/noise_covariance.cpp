@@ -1,18 +1,7 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Residuals are kept scaled by sqrt(n_k), so that every column is noise of one trial and
 //   S = sum over columns of r r' / divisor,   divisor = degrees of freedom.
-//
-// Ledoit-Wolf weight. Their S is a mean of n outer products; with y = sqrt(n/divisor) r ours is
-// too: S = (1/n) sum y y'. Then, with <A,B> = tr(AB'),
-//   m = tr(S)/p,  d^2 = |S - m I|^2,  b^2 = min(d^2, tau/(divisor n) sum |y y' - S|^2),  a =
-//   b^2/d^2,
-// which is their eq. (14) and lemmas 3.2-3.4 for divisor = n, tau = 1 (their norm is divided by p,
-// which cancels). sum |y y' - S|^2 = sum |y|^4 - n |S|^2. The divisor in place of one n counts what
-// the subtracted means have used up; tau counts what the samples tell twice.
-//
-// tau = 1 + 2 sum_k (1 - k/T) rho_k^2 from the sample autocorrelation r_k = c_k/c_0 with the usual
-// divisor T for every lag (Box & Jenkins). c_k is the sum over channels of the autocovariance, i.e.
-// the mean over channels weighted by variance: it depends on neither the basis nor the reference.
+#include "noise_parts.hpp"
 #include "problems.hpp"
 
 #include <headwater/base/error.hpp>
@@ -20,18 +9,17 @@
 #include <headwater/base/units.hpp>
 #include <headwater/signal/noise_covariance.hpp>
 #include <headwater/signal/reference.hpp>
+#include <headwater/signal/trial_covariance.hpp>
 
 #include <Eigen/Eigenvalues>
 #include <fmt/core.h>
 
 #include <algorithm>
 #include <cmath>
-#include <limits>
 
 namespace headwater {
 namespace {
 
-constexpr double kRankTolerance = 1e-10, kSingular = 1e-12;
 constexpr Eigen::Index kFewestSamples = 5;
 
 /// Scaled residuals in the subspace, one (M-1) by T block for each condition.
@@ -128,50 +116,6 @@ Residuals late_residuals(const std::vector<Average>& averages, const NoiseOption
   return result;
 }
 
-/// tau of the header comment.
-double correlation_factor(const std::vector<Eigen::MatrixXd>& blocks) {
-  const Eigen::Index samples = blocks.front().cols();
-  double tau = 1, variance = 0;
-  for (const Eigen::MatrixXd& block : blocks) variance += block.squaredNorm();
-  if (!(variance > 0)) return tau;
-  for (Eigen::Index lag = 1; lag < samples; ++lag) {
-    double covariance = 0;
-    for (const Eigen::MatrixXd& block : blocks)
-      covariance +=
-          block.leftCols(samples - lag).cwiseProduct(block.rightCols(samples - lag)).sum();
-    const double weight = 1 - static_cast<double>(lag) / static_cast<double>(samples);
-    tau += 2 * weight * (covariance / variance) * (covariance / variance);
-  }
-  return tau;
-}
-
-/// Shrinks, counts rank and condition, and refuses a singular result.
-void complete(NoiseCovariance& noise, const Eigen::MatrixXd& sample_covariance, double weight) {
-  if (!(weight >= 0 && weight <= 1))
-    throw ExperimentError(
-        fmt::format("Noise covariance: shrinkage is {}, expected a number from 0 to 1.", weight));
-  const Eigen::Index p = sample_covariance.rows();
-  const Eigen::VectorXd before =
-      Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd>(sample_covariance, Eigen::EigenvaluesOnly)
-          .eigenvalues();
-  const double largest = before[p - 1];
-  noise.rank = largest > 0 ? (before.array() > kRankTolerance * largest).count() : 0;
-  noise.shrinkage = weight;
-  const double mean = sample_covariance.trace() / static_cast<double>(p);
-  noise.single_trial_V2 = (1 - weight) * sample_covariance;
-  noise.single_trial_V2.diagonal().array() += weight * mean;
-  // The target is a multiple of the identity: eigenvalues move, eigenvectors stay.
-  const double low = (1 - weight) * before[0] + weight * mean;
-  const double high = (1 - weight) * largest + weight * mean;
-  noise.condition = low > 0 ? high / low : std::numeric_limits<double>::infinity();
-  if (!(low > kSingular * high))
-    throw InputError(fmt::format(
-        "Noise covariance ({}): singular: rank {} of {} ({} channels) with shrinkage {:.3g}. Use a "
-        "larger shrinkage (or the automatic one), a longer window, or drop flat and duplicate "
-        "channels.",
-        noise.source, noise.rank, p, p + 1, weight));
-}
-
 void check_averages(const std::vector<Average>& averages) {
   if (averages.empty()) throw InputError("Noise covariance: there is no average.");
   std::vector<std::string> problems;
@@ -248,21 +192,12 @@ void check_covariance(const Eigen::MatrixXd& full, const Labels& channels,
 
 }  // namespace
 
-double ledoit_wolf_weight(const Eigen::MatrixXd& samples, double divisor, double tau) {
-  const auto n = static_cast<double>(samples.cols());
-  const Eigen::MatrixXd covariance = samples * samples.transpose() / divisor;
-  const double mean = covariance.trace() / static_cast<double>(samples.rows());
-  Eigen::MatrixXd off_target = covariance;
-  off_target.diagonal().array() -= mean;
-  const double distance = off_target.squaredNorm();
-  if (!(distance > 0)) return 0;  // already a multiple of the identity: any weight gives the same
-  const double fourth = (samples.colwise().squaredNorm() * (n / divisor)).squaredNorm();
-  const double error = tau * (fourth / n - covariance.squaredNorm()) / divisor;
-  return std::clamp(error / distance, 0.0, 1.0);
-}
-
 NoiseCovariance estimate_noise(const std::vector<Average>& averages, const NoiseOptions& options) {
   check_averages(averages);
+  if (options.from == NoiseOptions::From::trials)
+    throw ExperimentError(
+        "Noise covariance: single trials are asked for, but there are averages only. Give the "
+        "recordings, or take the averages' baseline, their residual or a table.");
   if (options.from == NoiseOptions::From::table)
     return read_noise_table(options.table, averages.front().channels, options.shrinkage);
   const Residuals residuals = options.from == NoiseOptions::From::baseline
@@ -274,14 +209,19 @@ NoiseCovariance estimate_noise(const std::vector<Average>& averages, const Noise
   for (std::size_t k = 0; k < residuals.blocks.size(); ++k)
     samples.middleCols(static_cast<Eigen::Index>(k) * each, each) = residuals.blocks[k];
   const auto degrees = static_cast<double>(residuals.degrees);
-  const double tau = correlation_factor(residuals.blocks);
+  Eigen::MatrixXd lags = Eigen::MatrixXd::Zero(each, each);
+  for (const Eigen::MatrixXd& block : residuals.blocks) lags += block.transpose() * block;
+  const double tau = correlation_factor(lags);
   NoiseCovariance noise;
   noise.channels = averages.front().channels;
   noise.samples = residuals.degrees;
   noise.independent_samples = degrees / tau;
   noise.source = residuals.source;
-  complete(noise, samples * samples.transpose() / degrees,
-           options.shrinkage ? *options.shrinkage : ledoit_wolf_weight(samples, degrees, tau));
+  const Eigen::MatrixXd covariance = samples * samples.transpose() / degrees;
+  shrink_noise(noise, covariance,
+               options.shrinkage ? *options.shrinkage
+               : options.oas     ? oas_weight(covariance, noise.independent_samples)
+                                 : ledoit_wolf_weight(samples, degrees, tau));
   return noise;
 }
 
@@ -294,7 +234,7 @@ NoiseCovariance read_noise_table(const std::filesystem::path& path, const Labels
   NoiseCovariance noise;
   noise.channels = channels;
   noise.source = "table " + path.filename().string();
-  complete(
+  shrink_noise(
       noise,
       basis.transpose() * (0.5 * (full + full.transpose())) * basis * (kMicrovolt * kMicrovolt),
       shrinkage.value_or(0.0));

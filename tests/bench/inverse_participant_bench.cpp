@@ -6,6 +6,7 @@
 
 #include <headwater/base/random.hpp>
 #include <headwater/inverse/indices.hpp>
+#include <headwater/inverse/influence.hpp>
 #include <headwater/inverse/lcmv.hpp>
 #include <headwater/inverse/minimum_norm.hpp>
 #include <headwater/inverse/region_courses.hpp>
@@ -117,6 +118,42 @@ void participant(benchmark::State& state) {
   state.counters["bare_ms"] = 1e3 * least.count() / static_cast<double>(state.iterations());
 }
 
+/// Every lead left out in turn, of every contrast and method of one participant: map, peak and
+/// indices without it. Counter times_locate: over locating the participant once, measured in turns.
+void leads_left_out(benchmark::State& state) {
+  static const ContrastCase input;
+  using Clock = std::chrono::steady_clock;
+  const MinimumNorm minimum_norm(input.subspace, 0.8);
+  const Sloreta sloreta(input.subspace);
+  const Lcmv lcmv(input.subspace, input.data_covariance, input.outward, input.grid.mirror, {});
+  const SourceOperator operators[] = {minimum_norm.at(1e9, kNoiseScale),
+                                      sloreta.at(1e9, kNoiseScale), lcmv.at(kNoiseScale)};
+  const MatrixXd window = input.data.middleCols(kWindow.first, kWindow.count);
+  std::chrono::duration<double> located{0}, left_out{0};
+  for (auto _ : state) {
+    const auto start = Clock::now();
+    whole(input);
+    const auto middle = Clock::now();
+    for (int k = 0; k < kContrasts; ++k)
+      for (const auto& inverse : operators) {
+        const LeadDeletion deletion = delete_leads(inverse, window);
+        for (Eigen::Index m = 0; m < deletion.power.cols(); ++m) {
+          Eigen::Index peak = 0;
+          deletion.power.col(m).maxCoeff(&peak);
+          const auto indices = index_values(deletion.power.col(m), input.lobes);
+          benchmark::DoNotOptimize(peak);
+          benchmark::DoNotOptimize(indices.data());
+        }
+      }
+    const auto end = Clock::now();
+    located += middle - start;
+    left_out += end - middle;
+    state.SetIterationTime(std::chrono::duration<double>(end - middle).count());
+  }
+  state.counters["times_locate"] = left_out.count() / located.count();
+}
+
+BENCHMARK(leads_left_out)->UseManualTime()->Unit(benchmark::kMillisecond);
 BENCHMARK(participant)->UseManualTime()->Unit(benchmark::kMillisecond);
 
 }  // namespace

@@ -9,7 +9,10 @@
 #include <headwater/signal/contrast.hpp>
 #include <headwater/signal/electrodes.hpp>
 #include <headwater/signal/noise_covariance.hpp>
+#include <headwater/signal/regression.hpp>
+#include <headwater/signal/regressors.hpp>
 #include <headwater/signal/time_window.hpp>
+#include <headwater/signal/trials.hpp>
 
 #include <cstdint>
 #include <filesystem>
@@ -23,6 +26,23 @@ namespace headwater {
 struct ContrastPlan {
   std::string name;
   std::vector<ConditionWeight> weights;
+  std::string predictor;  ///< coefficients of the regression in place of weights, or ""
+};
+
+/// Frame of montage.positions; own: a digitised cap that is fitted to the head.
+enum class CapSpace { head, mni, own };
+
+/// [trials], [leads], [observer] and [regression].
+struct TrialPlan {
+  std::string recording_pattern;                        ///< absolute, with {participant}
+  TrialOptions options;                                 ///< leads.bad and leads.good apart
+  std::map<std::string, Labels> bad_leads, good_leads;  ///< by participant
+  std::vector<EventChoice> choices;                     ///< in the order of the conditions
+  double trim = 0;                                      ///< 0: plain mean
+  int blocks = 5;
+  std::optional<ObserverOptions> observer;
+  Labels predictors;
+  RegressionOptions regression;
 };
 
 /// A checked experiment: SI units, paths absolute, every default filled in.
@@ -33,13 +53,15 @@ struct Experiment {
   std::uint64_t seed = 1;
 
   Labels participants;
-  std::string averages_pattern;  ///< absolute, with {participant} and {condition}
+  std::string averages_pattern;  ///< absolute, with {participant} and {condition}; "" with trials
   std::optional<std::filesystem::path> counts_table;
   double trials_each = 0;
   VoltageUnit unit = VoltageUnit::microvolt;
+  TrialPlan trials;
+  bool has_trials() const { return !trials.recording_pattern.empty(); }
 
   std::string positions = "standard";  ///< or an absolute path, possibly with {participant}
-  PositionSpace position_space = PositionSpace::head;
+  CapSpace position_space = CapSpace::head;
   ChannelEdits edits;
 
   std::vector<Condition> conditions;
@@ -61,6 +83,7 @@ struct Experiment {
   double depth_exponent = 0.8;
   LcmvOptions lcmv;
   double lcmv_from_s = 0, lcmv_to_s = 1e9;
+  bool lcmv_from_trials = false;
   std::optional<std::filesystem::path> lcmv_table;
 
   std::vector<RegionRequest> regions;  ///< empty: lobes by side

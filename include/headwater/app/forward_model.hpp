@@ -3,16 +3,35 @@
 // and lead field. Participants with the same channels and positions share one.
 #pragma once
 #include <headwater/app/experiment_file.hpp>
+#include <headwater/signal/cap_fit.hpp>
 
 #include <Eigen/Core>
 
 #include <map>
 #include <memory>
 #include <mutex>
+#include <optional>
 #include <string>
 #include <vector>
 
 namespace headwater {
+
+/// Where the electrodes of one participant are.
+struct ParticipantCap {
+  std::string source;         ///< file, or "standard positions"
+  Montage table;              ///< all positions of the table, head frame; empty: standard
+  SphereFit sphere;           ///< radius 0 for standard positions
+  std::optional<CapFit> fit;  ///< of a digitised cap
+  Labels notes;               ///< unit mended, outlying electrodes, ...
+};
+
+/// Reads the participant's table and fits a digitised cap. Throws InputError: what the tables'
+/// rooms throw, a table about another origin than the frame it claims, a cap with left and right or
+/// nasion and inion exchanged.
+ParticipantCap read_participant_cap(const Experiment& experiment, const std::string& participant);
+
+/// Positions of these channels.
+Montage montage_of(const Experiment& experiment, const ParticipantCap& cap, const Labels& channels);
 
 struct ForwardModel {
   Montage montage;   ///< channels in the order of the data, head frame, m
@@ -36,9 +55,6 @@ std::shared_ptr<const ForwardModel> build_forward_model(const Experiment& experi
 class ForwardModels {
  public:
   explicit ForwardModels(const Experiment& experiment) : experiment_(&experiment) {}
-  /// Of a participant with these channels.
-  std::shared_ptr<const ForwardModel> of(const std::string& participant, const Labels& channels);
-  /// Of a montage that is at hand (the mean over participants).
   std::shared_ptr<const ForwardModel> of(const Montage& montage, const SphereFit& sphere);
 
  private:

@@ -18,6 +18,7 @@ enum class KeyType {
   text_map,    // { from = "to" }
   number_map,  // { name = number }
   effect_map,  // { factor = ["first", "second"] }
+  list_map,    // { name = ["a", "b", ...] }
   number_or_text,
   rule,  // text, or { snr = number } or { lambda = number }
 };
@@ -28,7 +29,9 @@ struct KeyRecord {
   std::string unit;                  ///< "" when it has none
   double least = 0, most = 0;        ///< of numbers (each of a list); equal: any
   std::vector<std::string> choices;  ///< of text; empty: any
-  std::string standard;              ///< default as it would be written; "required", or "" (none)
+  /// Default as it would be written; "required", "required here" (where its section is there), or
+  /// "" (none).
+  std::string standard;
   std::string meaning;
 };
 

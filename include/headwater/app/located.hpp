@@ -15,12 +15,37 @@
 
 namespace headwater {
 
+/// What becomes of a window's answer when something is left out.
+struct LeftOut {
+  std::string kind;  ///< "lead", "trials", "participant"
+  std::string name;
+  Eigen::Index point = 0;       ///< where the answer is then
+  double shift_m = 0;           ///< how far that is from the answer with all
+  double misfit = 0;            ///< of a lead (influence.hpp); NaN for others
+  std::vector<double> indices;  ///< then; in the order of WindowInfluence::indices
+};
+
+/// A lead, block of trials or participant matters when the answer moves by more than kLargeShift
+/// without it, or the laterality of all lobes or the temporal-parietal index by more than
+/// kLargeChange (a lobe's size; the customary cut of such indices). A lead that matters carries
+/// more than its share when few others matter (at most one in twenty), or when the others predict
+/// it three times worse than they do the median lead.
+struct WindowInfluence {
+  static constexpr double kLargeShift = 20e-3, kLargeChange = 0.2, kLargeMisfit = 3;
+  Eigen::Index point = 0;           ///< with all: largest point of the map, or of the scan
+  std::vector<PowerIndex> indices;  ///< with all; empty for the dipole scan
+  std::vector<LeftOut> left_out;
+  Labels carriers;   ///< leads, blocks, participants that carry too much
+  std::string note;  ///< one sentence for the peaks table, or ""
+};
+
 /// Second opinion for a window: of its mean scalp map, and of each of its samples.
 struct WindowDipoles {
   TimeWindow window;
   SampleRange samples;
   DipoleVerdict mean;
   std::vector<DipoleVerdict> at_sample;
+  WindowInfluence influence;  ///< of the mean map's verdict: the better model's (right) point
 };
 
 struct LocatedWindow {
@@ -30,6 +55,7 @@ struct LocatedWindow {
   std::vector<Peak> peaks;
   std::vector<PowerIndex> indices;
   FitQuality fit;  ///< explained_variance NaN where the method defines none
+  WindowInfluence influence;
 };
 
 struct LocatedContrast {

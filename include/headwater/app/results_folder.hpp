@@ -5,8 +5,10 @@
 //           grid.tsv  points.tsv  electrodes.tsv             (of each participant where caps
 //           differ) sub-01/sub-01_contrast-<label>_waveform.tsv      average reference, uV
 //                  sub-01_contrast-<label>_dipoles.tsv       one point or a mirrored pair
+//                  sub-01_contrast-<label>_influence.tsv     of each lead, block, participant
+//                  sub-01_leads.tsv  _trials.tsv  _regression.tsv  _cap.json
 //                  sub-01_contrast-<label>_method-<m>_peaks.tsv  _regions.tsv  _regionCourses.tsv
-//                                                     _indices.tsv  _fit.json
+//                                                     _indices.tsv  _influence.tsv  _fit.json
 //                  sub-01_contrast-<label>_method-<m>_window-<label>_sources.vti  .nii.gz
 //           mean/...                                         the mean over participants
 // Volumes are in MNI space. Nothing names a person, a user, a host or an absolute path.
@@ -51,6 +53,11 @@ class ResultsFolder {
   /// in a participant's folder when caps differ.
   void write_description(const std::string& title) const;
   void write_forward(const ForwardModel& forward, const std::string& participant) const;
+  /// Leads, trials, regression and cap of a participant: what was decided, with the figures.
+  void write_data_decisions(const ParticipantData& participant) const;
+  /// Standard errors of a predictor's coefficients, uV.
+  void write_standard_error(const ParticipantData& participant, const ContrastWaveform& contrast,
+                            const std::string& predictor) const;
   void write_waveform(const std::string& participant, const ContrastWaveform& contrast,
                       bool full_precision) const;
   void write_dipoles(const std::string& participant, const ContrastWaveform& contrast,

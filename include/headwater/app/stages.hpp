@@ -50,8 +50,20 @@ InspectReport inspect(const Experiment& experiment, const StageOptions& options)
 LocateReport locate(const Experiment& experiment, const InspectReport& read,
                     const StageOptions& options);
 
+/// Who carries more than a share of a window's answer: leads, blocks of trials, participants.
+struct LeadFinding {
+  std::string participant, contrast, window;
+  Labels carriers;
+  std::string note;
+};
+
+/// By sLORETA, of every participant that was read and of their mean; nothing is written.
+std::vector<LeadFinding> find_carriers(const Experiment& experiment, const InspectReport& report,
+                                       const StageOptions& options);
+
 /// What inspect found, as a table for a terminal and as JSON.
 OutputTable inspect_table(const InspectReport& report);
-Json inspect_json(const Experiment& experiment, const InspectReport& report);
+Json inspect_json(const Experiment& experiment, const InspectReport& report,
+                  const std::vector<LeadFinding>& findings);
 
 }  // namespace headwater

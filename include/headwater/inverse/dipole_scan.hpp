@@ -43,15 +43,27 @@ class DipoleScan {
   DipoleScan(const Subspace& subspace, const SourceGrid& grid);
   /// map_V: M channels, any reference.
   DipoleVerdict judge(const Eigen::VectorXd& map_V) const;
+  /// The same with each lead left out in turn (an indicator of the lead joins every candidate's
+  /// columns: exact, and cheap).
+  std::vector<DipoleVerdict> judge_without_leads(const Eigen::VectorXd& map_V) const;
 
  private:
-  DipoleFit best(const Eigen::VectorXd& y, const Eigen::MatrixXd& basis,
-                 const std::vector<Eigen::Index>& points, int width) const;
+  /// One kind of candidate: single points (width 3) or pairs (width 6).
+  struct Candidates {
+    int width = 3;
+    std::vector<Eigen::Index> points;  // single points; right halves of pairs
+    Eigen::MatrixXd basis;             // Q_l side by side: M-1 by width * #points
+  };
+  /// The fit of candidate `place` to y; `without`: empty, or the lead's column to leave out.
+  DipoleFit fit(const Candidates& candidates, Eigen::Index place, double unexplained,
+                const Eigen::VectorXd& y, const Eigen::VectorXd& without) const;
+  DipoleFit best(const Candidates& candidates, const Eigen::VectorXd& y) const;
+  std::vector<DipoleFit> best_without_leads(const Candidates& candidates,
+                                            const Eigen::VectorXd& y) const;
 
   const Subspace* subspace_;
   const SourceGrid* grid_;
-  std::vector<Eigen::Index> all_, right_;  // candidates: single points; right halves of pairs
-  Eigen::MatrixXd one_, pair_;             // Q_l side by side: M-1 by 3N, M-1 by 6P
+  Candidates one_, pair_;
 };
 
 }  // namespace headwater

@@ -34,6 +34,11 @@ struct IndexOptions {
   std::string stream;  ///< name of the random stream, e.g. participant and contrast
 };
 
+/// The indices alone, out of the power (mean squared amplitude) of each point. Same names and order
+/// as PowerIndices::at; low and high are NaN.
+std::vector<PowerIndex> index_values(const Eigen::VectorXd& power,
+                                     const std::vector<Region>& lobes);
+
 /// The region powers of one operator as quadratic forms, made once and applied to any number of
 /// windows.
 class PowerIndices {

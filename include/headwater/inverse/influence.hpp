@@ -1,30 +1,34 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// How far an answer moves when one lead is left out.
+// How far an answer moves when one lead, or one part of the data, is left out.
 //
-// Leaving lead m out restricts the reference-free subspace to the complement of u = B'e_m (which is
-// orthogonal there to the reference of the leads that stay). With A = K R K' + lambda C (R the
-// source weights) the restricted inverse is a rank-one downdate,
-//   (P A P')^-1 in the complement = A^-1 - a a'/(u'a),  a = A^-1 u
-// so that with g = R K'a / (u'a) and c(t) = a'y(t) every estimate without the lead is
-//   J_m(t) = J(t) - g c(t),
-// and sLORETA's blocks S_ll, m = S_ll - (K_l'a)(K_l'a)'/(u'a). What is needed of J is its power
-// over a window, J_l J_l' (3 x 3 of each point), which is updated in the same way: all leads cost
-// about one product with the kernel. lambda and the source weights stay as they were with all leads
-// (eLORETA's are not iterated anew); LCMV's filters are remade from the downdated data covariance,
-// with the direction of each point kept.
+// Leaving lead m out restricts the reference-free subspace to the complement of u = B'e_m. With A =
+// K R K' + lambda C (R the source weights) the restricted inverse is a rank-one downdate, A^-1 - a
+// a'/(u'a), a = A^-1 u, and so the estimate without the lead is the same operator applied to
+//   d_m(t) = d(t) - e_m (P d(t))_m / P_mm,   P = B A^-1 B'
+// - the lead's value replaced by what the others predict of it. (P d)_m / P_mm is the deleted
+// residual; divided by its model deviation P_mm^(-1/2) it compares leads. Of the window only J_l
+// J_l' (3 x 3 of each point) is needed, which is updated in the same way: all leads together cost
+// about one product with the kernel. sLORETA's standardisation is downdated too: with s =
+// S_l^(-1/2) K_l'a,
+//   power_m = |J_m|^2 + (s'J_m)^2 / (P_mm - |s|^2).
+// So minimum norm (weights R kept) and sLORETA are exactly what the leads that stay give; eLORETA
+// keeps its weights, LCMV the direction and noise gain of each point, all of them lambda.
 #pragma once
-#include <headwater/inverse/dipole_scan.hpp>
 #include <headwater/inverse/subspace.hpp>
 
 #include <Eigen/Core>
 
-#include <vector>
-
 namespace headwater {
 
-/// Mean over the window's samples of the squared amplitude of each point, lead m left out: N by M.
-/// Of an operator made of `subspace` (its own map, scale and kind); y_V: M by T_w, the window.
-Eigen::MatrixXd power_without_leads(const Subspace& subspace, const SourceOperator& inverse,
-                                    const Eigen::MatrixXd& window_V);
+struct LeadDeletion {
+  /// Mean over the window's samples of the squared amplitude, N by M: column m without lead m.
+  Eigen::MatrixXd power;
+  /// rms over the window of each lead's deleted residual in model deviations, divided by the median
+  /// over leads: how much worse than the others it is predicted by them.
+  Eigen::VectorXd misfit;
+};
+
+/// window_V: M by T_w samples of the contrast, channels in the operator's order, any reference.
+LeadDeletion delete_leads(const SourceOperator& inverse, const Eigen::MatrixXd& window_V);
 
 }  // namespace headwater

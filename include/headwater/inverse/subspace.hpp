@@ -50,6 +50,9 @@ struct SourceOperator {
   bool pair_blind =
       false;          ///< suppresses correlated bilateral sources (LCMV without mirror pairing)
   double lambda = 0;  ///< multiplier of the contrast's noise covariance; NaN where none
+  /// B A^-1 B', M by M: A the data covariance that the estimate rests on (K R K' + lambda C; LCMV:
+  /// D). What leaving a lead out needs (influence.hpp).
+  Eigen::MatrixXd precision;
 };
 
 }  // namespace headwater

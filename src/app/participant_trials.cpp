@@ -1,0 +1,162 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include "app/participant_trials.hpp"
+
+#include <headwater/base/error.hpp>
+#include <headwater/signal/recording.hpp>
+#include <headwater/signal/reference.hpp>
+
+#include <fmt/core.h>
+
+#include <algorithm>
+
+namespace headwater {
+namespace {
+
+/// The values of a predictor for each event: of the observer, or a column of numbers.
+Regressor regressor_of(const std::string& name, const Table& events,
+                       const std::optional<ObserverRegressors>& observer) {
+  if (observer && find_label(observer_regressor_names(), name))
+    return {name, regressor(*observer, name)};
+  const auto column = events.column(name);
+  Regressor result{name, Eigen::VectorXd(static_cast<Eigen::Index>(events.rows.size()))};
+  for (std::size_t row = 0; row < events.rows.size(); ++row)
+    result.of_event[static_cast<Eigen::Index>(row)] =
+        events.optional_number(row, column).value_or(std::numeric_limits<double>::quiet_NaN());
+  return result;
+}
+
+void regress_trials(const TrialPlan& plan, const Recording& recording, const Trials& trials,
+                    TrialsSummary& summary) {
+  if (plan.predictors.empty()) return;
+  std::optional<ObserverRegressors> observer;
+  if (plan.observer) {
+    observer = observe(recording.events(), *plan.observer);
+    summary.prior = observer->prior;
+  }
+  std::vector<Regressor> regressors;
+  for (const auto& name : plan.predictors)
+    regressors.push_back(regressor_of(name, recording.events(), observer));
+  summary.regression = regress(trials, regressors, plan.regression, plan.blocks);
+}
+
+/// For each condition the places of its trials, block by block: consecutive, nearly equal.
+std::vector<std::vector<Eigen::Index>> trials_of_blocks(const Trials& trials, std::size_t condition,
+                                                        int blocks) {
+  std::vector<Eigen::Index> own;
+  for (Eigen::Index k = 0; k < trials.count(); ++k)
+    if (trials.condition[static_cast<std::size_t>(k)] == condition) own.push_back(k);
+  std::vector<std::vector<Eigen::Index>> result(static_cast<std::size_t>(blocks));
+  for (std::size_t i = 0; i < own.size(); ++i)
+    result[i * static_cast<std::size_t>(blocks) / own.size()].push_back(own[i]);
+  return result;
+}
+
+/// Averages with each block of every condition's trials left out; of averages[k] in V.
+std::vector<std::vector<Average>> averages_without_blocks(const Trials& trials,
+                                                          const std::vector<Average>& averages,
+                                                          int blocks) {
+  std::vector<std::vector<Average>> result(static_cast<std::size_t>(blocks), averages);
+  for (std::size_t c = 0; c < averages.size(); ++c) {
+    const auto places = trials_of_blocks(trials, c, blocks);
+    const auto total = static_cast<double>(trials.count_of(c));
+    for (std::size_t b = 0; b < places.size(); ++b) {
+      const auto left = static_cast<double>(places[b].size());
+      if (left == 0 || left == total) continue;
+      Eigen::MatrixXd sum =
+          Eigen::MatrixXd::Zero(averages[c].data_V.rows(), averages[c].data_V.cols());
+      for (const Eigen::Index k : places[b]) sum += trials.trial(k);
+      result[b][c].data_V = (total * averages[c].data_V - sum) / (total - left);
+    }
+  }
+  return result;
+}
+
+PartLeftOut part_of(const std::string& name, const Eigen::MatrixXd& data_V,
+                    const Eigen::VectorXd& times_s, const std::vector<TimeWindow>& windows) {
+  PartLeftOut part{"trials", name, {}};
+  for (const auto& window : windows) {
+    const auto samples = samples_in(times_s, window);
+    part.windows_V.push_back(data_V.middleCols(samples.first, samples.count));
+  }
+  return part;
+}
+
+/// Contrasts of averages, and of regression coefficients, each with its blocks left out.
+void form_contrasts(const Experiment& experiment, const Trials& trials, ParticipantData& data) {
+  const int blocks = experiment.trials.blocks;
+  std::vector<Average> means;  // blocks are taken out of plain means
+  for (std::size_t c = 0; c < data.averages.size(); ++c)
+    means.push_back(experiment.trials.trim > 0 ? average_trials(trials, c, 0) : data.averages[c]);
+  const auto without = averages_without_blocks(trials, means, blocks);
+  const auto& regression = data.trials->regression;
+  for (const auto& plan : experiment.contrasts) {
+    const auto windows = windows_of(experiment, plan.name);
+    std::vector<PartLeftOut> parts;
+    const auto name_of = [&](int b) { return fmt::format("block {} of {}", b + 1, blocks); };
+    if (plan.predictor.empty()) {
+      data.contrasts.push_back(form_contrast(plan.name, plan.weights, data.averages, data.noise));
+      for (int b = 0; b < blocks; ++b)
+        parts.push_back(part_of(
+            name_of(b),
+            form_contrast(plan.name, plan.weights, without[static_cast<std::size_t>(b)], data.noise)
+                .data_V,
+            trials.times_s, windows));
+    } else {
+      const auto place = static_cast<std::size_t>(*find_label(regression.names, plan.predictor));
+      data.contrasts.push_back(
+          coefficient_contrast(plan.name, regression, place, trials, data.noise));
+      for (std::size_t b = 0; b < regression.without_block.size(); ++b)
+        parts.push_back(part_of(name_of(static_cast<int>(b)), regression.without_block[b][place],
+                                trials.times_s, windows));
+    }
+    data.parts.push_back(std::move(parts));
+  }
+}
+
+Labels fixed_leads(const std::map<std::string, Labels>& by_participant, const std::string& name) {
+  const auto found = by_participant.find(name);
+  return found != by_participant.end() ? found->second : Labels{};
+}
+
+}  // namespace
+
+void load_trials(const Experiment& experiment, ParticipantData& data) {
+  const TrialPlan& plan = experiment.trials;
+  const auto path = fill_pattern(plan.recording_pattern, data.name, "");
+  const Recording recording(path);
+  for (const auto& file : recording.files()) data.inputs.push_back(file.string());
+  TrialOptions options = plan.options;
+  options.leads.bad = fixed_leads(plan.bad_leads, data.name);
+  options.leads.good = fixed_leads(plan.good_leads, data.name);
+  const Trials trials =
+      cut_trials(recording, experiment.edits, plan.choices, options,
+                 [&](const Labels& labels) { return montage_of(experiment, data.cap, labels); });
+  data.notes = recording.notes();
+  data.notes.insert(data.notes.end(), trials.notes.begin(), trials.notes.end());
+  data.leads = trials.leads;
+  for (std::size_t c = 0; c < experiment.conditions.size(); ++c)
+    data.averages.push_back(average_trials(trials, c, plan.trim));
+  if (const auto warning = count_warning(data.averages); !warning.empty())
+    data.notes.push_back(warning);
+  for (const auto& contrast : experiment.contrasts)
+    for (const auto& window : windows_of(experiment, contrast.name))
+      samples_in(trials.times_s, window);  // throws where there is none
+
+  using From = NoiseOptions::From;
+  data.noise =
+      experiment.noise.from == From::table
+          ? read_noise_table(experiment.noise.table, trials.channels, experiment.noise.shrinkage)
+      : experiment.noise.from == From::trials ? estimate_trial_noise(trials, experiment.noise)
+                                              : estimate_noise(data.averages, experiment.noise);
+  data.trials.emplace();
+  data.trials->records = trials.records;
+  if (experiment.lcmv_from_trials)
+    data.data_covariance_V2 =
+        trial_data_covariance(trials, experiment.lcmv_from_s, experiment.lcmv_to_s);
+  regress_trials(plan, recording, trials, *data.trials);
+  data.notes.insert(data.notes.end(), data.trials->regression.notes.begin(),
+                    data.trials->regression.notes.end());
+  form_contrasts(experiment, trials, data);
+}
+
+}  // namespace headwater
