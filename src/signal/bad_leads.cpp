@@ -6,7 +6,7 @@
 //   sum over time of prediction^2          = (W C W')_ii
 //   sum over time of (lead - prediction)^2 = C_ii - 2 (W C)_ii + (W C W')_ii,
 // so that a round costs M^3 for each trial and not M^2 T.
-#include "problems.hpp"
+#include "signal/problems.hpp"
 
 #include <headwater/base/error.hpp>
 #include <headwater/signal/bad_leads.hpp>

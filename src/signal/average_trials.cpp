@@ -1,0 +1,100 @@
+// SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/error.hpp>
+#include <headwater/base/units.hpp>
+#include <headwater/signal/trials.hpp>
+
+#include <fmt/core.h>
+
+#include <algorithm>
+#include <cmath>
+#include <stdexcept>
+
+namespace headwater {
+namespace {
+
+using Index = Eigen::Index;
+
+constexpr double kUnequalCounts = 1.5;
+
+/// z with P(Z > z) = share, 0 < share < 1/2: bisection, to the last bits.
+double upper_quantile(double share) {
+  double low = 0, high = 40;
+  for (int k = 0; k < 80; ++k) {
+    const double middle = (low + high) / 2;
+    (std::erfc(middle / std::sqrt(2.0)) / 2 > share ? low : high) = middle;
+  }
+  return low;
+}
+
+/// Variance of the plain mean over that of the trimmed one, for normal noise.
+double efficiency(double share) {
+  const double z = upper_quantile(share);
+  const double density = std::exp(-z * z / 2) / std::sqrt(2 * kPi);
+  const double left = 1 - 2 * share;
+  return left * left / (left - 2 * z * density + 2 * share * z * z);
+}
+
+/// Mean of what is left without the `cut` smallest and largest. Reorders.
+double trimmed_mean(std::vector<double>& values, std::ptrdiff_t cut) {
+  const auto begin = values.begin() + cut, end = values.end() - cut;
+  if (cut > 0) {
+    std::nth_element(values.begin(), begin, values.end());
+    std::nth_element(begin, end - 1, values.end());
+  }
+  double sum = 0;
+  for (auto it = begin; it != end; ++it) sum += *it;
+  return sum / static_cast<double>(end - begin);
+}
+
+}  // namespace
+
+Average average_trials(const Trials& trials, std::size_t condition, double trim) {
+  if (!(trim >= 0 && trim < 0.5))
+    throw ExperimentError(
+        fmt::format("A share of {} of the trials cannot be trimmed at each end: expected 0 to "
+                    "below 0.5.",
+                    trim));
+  const Index count = trials.count_of(condition), samples = trials.times_s.size();
+  if (count == 0) throw std::logic_error("average_trials: a condition without trials");
+  // The addend keeps 0.1 * 10 from being 0 for rounding.
+  const auto cut = static_cast<std::ptrdiff_t>(trim * static_cast<double>(count) + 1e-9);
+  Average average;
+  average.condition = trials.conditions.at(condition);
+  average.channels = trials.channels;
+  average.times_s = trials.times_s;
+  average.trials = static_cast<double>(count);
+  std::vector<Index> members;
+  for (Index k = 0; k < trials.count(); ++k)
+    if (trials.condition[static_cast<std::size_t>(k)] == condition) members.push_back(k);
+  average.data_V = Eigen::MatrixXd::Zero(trials.data_V.rows(), samples);
+  if (cut == 0) {
+    for (const Index k : members) average.data_V += trials.trial(k);
+    average.data_V /= average.trials;
+    return average;
+  }
+  std::vector<double> values(members.size());
+  for (Index t = 0; t < samples; ++t)
+    for (Index m = 0; m < average.data_V.rows(); ++m) {
+      for (std::size_t i = 0; i < members.size(); ++i)
+        values[i] = trials.data_V(m, members[i] * samples + t);
+      average.data_V(m, t) = trimmed_mean(values, cut);
+    }
+  average.trials *= efficiency(static_cast<double>(cut) / average.trials);
+  return average;
+}
+
+std::string count_warning(const std::vector<Average>& averages) {
+  if (averages.empty()) return "";
+  const auto [least, most] =
+      std::minmax_element(averages.begin(), averages.end(),
+                          [](const Average& a, const Average& b) { return a.trials < b.trials; });
+  if (most->trials <= kUnequalCounts * least->trials) return "";
+  return fmt::format(
+      "{:.4g} trials of '{}' but {:.4g} of '{}': the noise of the latter is {:.0f} % larger, and "
+      "peaks (largest values) of its average are biased upwards against the former's. Compare "
+      "means over windows, or equal numbers of trials.",
+      most->trials, most->condition, least->trials, least->condition,
+      100 * (std::sqrt(most->trials / least->trials) - 1));
+}
+
+}  // namespace headwater
