@@ -2,6 +2,7 @@
 #include "example_noise.hpp"
 #include "example_person.hpp"
 #include "example_recipe.hpp"
+#include "example_recordings.hpp"
 
 #include <headwater/app/example.hpp>
 #include <headwater/base/atomic_file.hpp>
@@ -217,7 +218,9 @@ void write_example(const fs::path& folder, std::uint64_t seed) {
   write_truth(folder / "truth.tsv", recipe);
   write_truth_of_people(folder / "truth_participants.tsv", people);
   write_truth_of_heads(folder / "truth_heads.tsv", people);
+  write_example_recordings(folder, recipe, people, seed);
   write_file(folder / "README.md", embedded_file("example_readme.md"));
+  write_file(folder / "recordings.toml", embedded_file("example_recordings.toml"));
   // Last: where the experiment file is, everything is.
   write_file(folder / "experiment.toml", embedded_file("example_experiment.toml"));
 }

@@ -108,6 +108,26 @@ ExampleBackground read_background(const TomlValue& table) {
   return background;
 }
 
+ExampleRecordings read_recordings(const TomlValue& table) {
+  ExampleRecordings recordings;
+  recordings.people = whole_number(table, "people");
+  recordings.blocks = whole_number(table, "blocks");
+  recordings.beats = whole_number(table, "beats");
+  recordings.interval_s = number(table, "interval_ms") * kMillisecond;
+  recordings.steady_sd_s = number(table, "steady_sd_ms") * kMillisecond;
+  recordings.loose_sd_s = number(table, "loose_sd_ms") * kMillisecond;
+  recordings.late_share = number(table, "late_share");
+  recordings.late_s = number(table, "late_ms") * kMillisecond;
+  recordings.forgetting = number(table, "forgetting");
+  recordings.n1_Am = number(table, "n1_nAm") * kNanoampereMetre;
+  recordings.mismatch_Am = number(table, "mismatch_nAm") * kNanoampereMetre;
+  recordings.mismatch_per_bit_Am = number(table, "mismatch_per_bit_nAm") * kNanoampereMetre;
+  recordings.bad_person = whole_number(table, "bad_person");
+  recordings.bad_lead = text(table, "bad_lead");
+  recordings.bad_V = number(table, "bad_uV") * kMicrovolt;
+  return recordings;
+}
+
 ExampleComponent read_component(const TomlValue& table,
                                 const std::vector<ExampleCondition>& conditions) {
   ExampleComponent component;
@@ -136,6 +156,7 @@ ExampleRecipe read_example_recipe() {
   recipe.times_s = read_times(recording);
   recipe.people = read_people(member(document, "participants"));
   recipe.background = read_background(member(document, "background"));
+  recipe.recordings = read_recordings(member(document, "recordings"));
   for (const auto& table : list(document, "conditions"))
     recipe.conditions.push_back({text(table, "name"), even_spread(table, "trials")});
   for (const auto& table : list(document, "components"))

@@ -58,12 +58,24 @@ struct ExampleComponent {
   bool is_pair() const { return sources.size() == 2; }
 };
 
+/// The single-trial part: see templates/example.toml.
+struct ExampleRecordings {
+  int people = 0, blocks = 0, beats = 0;
+  double interval_s = 0, steady_sd_s = 0, loose_sd_s = 0, late_share = 0, late_s = 0;
+  double forgetting = 1;
+  double n1_Am = 0, mismatch_Am = 0, mismatch_per_bit_Am = 0;
+  int bad_person = 0;
+  std::string bad_lead;
+  double bad_V = 0;
+};
+
 struct ExampleRecipe {
   Labels leads;  ///< as recorded: without the reference
   std::string reference;
   Eigen::VectorXd times_s;
   ExamplePeople people;
   ExampleBackground background;
+  ExampleRecordings recordings;
   std::vector<ExampleCondition> conditions;
   std::vector<ExampleComponent> components;
 };

@@ -1,89 +1,25 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Tables of electrode positions: our own with the unit in the column names, or those of BIDS
-// (electrodes.tsv), whose unit stands in the coordsystem.json beside them.
+// Electrode positions that are in the head frame or in MNI space already. A cap in a frame of its
+// own: read_cap.cpp.
+#include "position_table.hpp"
+
 #include <headwater/base/error.hpp>
 #include <headwater/base/head_frame.hpp>
-#include <headwater/base/json.hpp>
-#include <headwater/base/table.hpp>
 #include <headwater/base/units.hpp>
 #include <headwater/signal/electrodes.hpp>
 
 #include <fmt/core.h>
 
-#include <array>
-#include <cmath>
+#include <utility>
 
 namespace headwater {
 namespace {
 
 namespace fs = std::filesystem;
 
-struct LengthUnit {
-  std::string_view name;
-  double metres;
-};
-constexpr std::array<LengthUnit, 3> kLengthUnits{{{"mm", 1e-3}, {"cm", 1e-2}, {"m", 1}}};
-
 // Between the heads of newborns and anything that could be meant.
 bool makes_a_head(double radius_m) {
   return radius_m >= 40e-3 && radius_m <= 200e-3;
-}
-
-/// The file that states the unit of a BIDS electrodes.tsv, or an empty path.
-fs::path coordinate_file(const fs::path& table) {
-  static constexpr std::string_view ending = "electrodes.tsv";
-  std::string name = table.filename().string();
-  if (const auto at = name.rfind(ending); at != std::string::npos) {
-    name.replace(at, ending.size(), "coordsystem.json");
-    if (fs::path beside = table.parent_path() / name; fs::exists(beside)) return beside;
-  }
-  const fs::path plain = table.parent_path() / "coordsystem.json";
-  return fs::exists(plain) ? plain : fs::path();
-}
-
-LengthUnit stated_unit(const fs::path& table) {
-  const std::string way_out = "State it there (mm, cm or m), or name the columns x_mm, y_mm, z_mm.";
-  const fs::path path = coordinate_file(table);
-  if (path.empty())
-    throw InputError(fmt::format(
-        "{}: the unit of x, y, z is not stated: no coordsystem.json with EEGCoordinateUnits beside "
-        "the table. {}",
-        table.string(), way_out));
-  const Json json = read_json(path, "coordinate system of the electrodes");
-  const Json* unit = json.is_object() ? json.find("EEGCoordinateUnits") : nullptr;
-  if (!unit)
-    throw InputError(fmt::format("{}: no EEGCoordinateUnits, so the unit of {} is not stated. {}",
-                                 path.string(), table.filename().string(), way_out));
-  std::string found = unit->dump();
-  for (const LengthUnit& known : kLengthUnits)
-    if (found == fmt::format("\"{}\"", known.name)) return known;
-  throw InputError(fmt::format("{}: EEGCoordinateUnits is {}, expected \"mm\", \"cm\" or \"m\". {}",
-                               path.string(), found, way_out));
-}
-
-/// Names and positions in the table's own unit, rows without a position left out.
-Montage position_rows(const Table& table, const std::array<std::size_t, 3>& axes) {
-  const std::size_t name = table.column("name");
-  Montage montage;
-  std::vector<Eigen::Vector3d> positions;
-  for (std::size_t row = 0; row < table.rows.size(); ++row) {
-    const auto x = table.optional_number(row, axes[0]), y = table.optional_number(row, axes[1]),
-               z = table.optional_number(row, axes[2]);
-    if (!x || !y || !z) continue;
-    montage.labels.push_back(table.rows[row][name]);
-    positions.emplace_back(*x, *y, *z);
-  }
-  montage.positions.resize(3, static_cast<Eigen::Index>(positions.size()));
-  for (std::size_t i = 0; i < positions.size(); ++i)
-    montage.positions.col(static_cast<Eigen::Index>(i)) = positions[i];
-  if (const Labels repeated = repeated_labels(montage.labels); !repeated.empty())
-    throw InputError(fmt::format("{}: more than one row is named {} (upper and lower case alike).",
-                                 table.source, join_labels(repeated)));
-  if (positions.size() < 4)
-    throw InputError(
-        fmt::format("{}: {} positions (rows with n/a left out), at least 4 are needed.",
-                    table.source, positions.size()));
-  return montage;
 }
 
 /// Throws when a sphere through the positions could be no head in the stated unit.
@@ -109,22 +45,10 @@ void check_unit(const Eigen::Matrix3Xd& raw, const LengthUnit& unit, const std::
 }  // namespace
 
 Montage read_positions(const fs::path& path, PositionSpace space) {
-  const Table table = read_table(path, "table of electrode positions");
-  const bool unit_in_names = table.find_column("x_mm").has_value();
-  const LengthUnit unit = unit_in_names ? kLengthUnits[0] : [&] {
-    if (!table.find_column("x"))
-      throw InputError(fmt::format(
-          "{}: expected the columns name, x_mm, y_mm, z_mm (or name, x, y, z with the unit in a "
-          "coordsystem.json), found {}.",
-          table.source, join_labels(table.columns)));
-    return stated_unit(path);
-  }();
-  Montage montage = position_rows(
-      table, unit_in_names
-                 ? std::array{table.column("x_mm"), table.column("y_mm"), table.column("z_mm")}
-                 : std::array{table.column("x"), table.column("y"), table.column("z")});
-  check_unit(montage.positions, unit, table.source);
-  montage.positions *= unit.metres;
+  PositionTable table = read_position_table(path);
+  Montage montage = std::move(table.rows);
+  check_unit(montage.positions, table.unit, table.source);
+  montage.positions *= table.unit.metres;
   if (space == PositionSpace::mni) montage.positions.colwise() -= kHeadCentreMni;
   return montage;
 }

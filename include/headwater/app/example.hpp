@@ -18,7 +18,8 @@ namespace headwater {
 
 /// Writes the example experiment to a folder (created; one that is not empty is refused:
 /// ExperimentError): experiment.toml, README.md, participants.tsv, averages/, and the truth -
-/// truth.tsv, truth_participants.tsv, truth_heads.tsv. The same seed gives the same bytes.
+/// truth.tsv, truth_participants.tsv, truth_heads.tsv; and single trials: recordings.toml,
+/// recordings/ (a BIDS folder), truth_recordings.tsv. The same seed gives the same bytes.
 void write_example(const std::filesystem::path& folder, std::uint64_t seed);
 
 }  // namespace headwater

@@ -3,7 +3,7 @@
 //
 // Steps: unit (a stated unit that the numbers contradict - sphere radius outside 60 to 140 mm - is
 // replaced by the one that makes a head, and that is said); sphere through the electrodes with
-// outliers reweighted (an electrode far off the sphere does not pull it); origin at the centre;
+// outliers left out (an electrode far off the sphere does not pull it); origin at the centre;
 // rotation, which is rigid (no scaling, no reflection):
 //   names      least squares of the directions on those of the standard cap (Kabsch 1976 Acta Cryst
 //              A32:922), over electrodes with a 10-5 name, outliers out: used when at least 8 have
@@ -11,9 +11,12 @@
 //   landmarks  nasion and both preauricular points: x along LPA to RPA, y towards the nasion, then
 //              pitched about x so that the nasion's direction from the sphere's centre has the
 //              template's elevation; used when names are too few, and otherwise as a check of them
+//   axes       where there are neither: the axes that the coordinate system states (RAS, ALS, ...)
 // The rotation by names is taken twice, with and without reflection: a cap with left and right
-// exchanged fits its mirror image far better. Nasion and inion exchanged: landmarks, or the stated
-// axes of the coordinate system, turned by more than 120 degrees about z against the names.
+// exchanged fits its mirror image far better. What was exchanged is told by the landmarks, or else
+// by the stated axes: the nasion by more than 120 degrees about z from the front of the names
+// (reversed), or the right ear on the left of the names. A mirrored cap comes out with its exchanged
+// names where they were digitised; its outliers are those besides the exchange.
 #pragma once
 #include <headwater/base/sphere_fit.hpp>
 #include <headwater/signal/electrodes.hpp>
@@ -33,6 +36,7 @@ struct DigitisedCap {
   Labels without_position;  ///< n/a in the table
   std::optional<Eigen::Vector3d> nasion, left_ear, right_ear;
   std::string coordinate_system;  ///< EEGCoordinateSystem or ""
+  std::string axes;  ///< such as "RAS" (x right, y anterior, z superior) where it is stated, or ""
   std::string source;
   Labels notes;  ///< unit replaced, ...
 };
@@ -46,7 +50,7 @@ DigitisedCap read_cap(const std::filesystem::path& path);
 
 struct CapFit {
   Montage montage;     ///< head frame, m; all electrodes of the cap, landmarks left out
-  SphereFit sphere;    ///< in the cap's own frame
+  SphereFit sphere;    ///< in the cap's own frame; residual of all, rms without those left out
   std::string method;  ///< "names", "landmarks", "stated axes"
   Eigen::Matrix3d rotation = Eigen::Matrix3d::Identity();  ///< cap's frame to head frame
   double angle_rms_deg = 0;       ///< of directions against the standard cap; NaN without names
