@@ -20,10 +20,20 @@ using Index = Eigen::Index;
 
 constexpr double kTolerance = 1e-6;  // of a sample, in times that are meant to be one
 
-/// First and last multiple of step_s in [from_s, to_s].
+/// First and last multiple of step_s in [from_s, to_s]; nothing of what is no number.
 std::pair<Index, Index> multiples_in(double from_s, double to_s, double step_s) {
-  return {static_cast<Index>(std::ceil(from_s / step_s - kTolerance)),
-          static_cast<Index>(std::floor(to_s / step_s + kTolerance))};
+  constexpr double most = 1e15;  // fits an Index
+  const double first = std::ceil(from_s / step_s - kTolerance);
+  const double last = std::floor(to_s / step_s + kTolerance);
+  if (!(first >= -most && last <= most && first <= last)) return {0, -1};
+  return {static_cast<Index>(first), static_cast<Index>(last)};
+}
+
+Index longest_piece(const Recording& recording) {
+  Index longest = 0;
+  for (const RecordingSegment& segment : recording.segments())
+    longest = std::max(longest, segment.count);
+  return longest;
 }
 
 void check_filters(double sampling_Hz, const TrialOptions& options,
@@ -110,9 +120,15 @@ EpochGrid make_grid(const Recording& recording, const TrialOptions& options) {
   grid.decimate = std::max(1, options.decimate);
   const double step_s = static_cast<double>(grid.decimate) / rate;
   const auto [first, last] = multiples_in(options.from_s, options.to_s, step_s);
-  if (!std::isfinite(options.from_s) || !std::isfinite(options.to_s) || last < first) {
-    problems.push_back(fmt::format("an epoch from {:g} to {:g} ms holds no sample.",
-                                   options.from_s / kMillisecond, options.to_s / kMillisecond));
+  const Index longest = longest_piece(recording);
+  const bool too_long = last - first >= longest / grid.decimate + 1;
+  if (last < first || too_long) {
+    problems.push_back(
+        fmt::format("an epoch from {:g} to {:g} ms {}.", options.from_s / kMillisecond,
+                    options.to_s / kMillisecond,
+                    too_long ? fmt::format("is longer than the longest gap-free piece, {:.4g} s",
+                                           static_cast<double>(longest) / rate)
+                             : "holds no sample"));
     throw InputError(problem_list(recording.source(), problems));
   }
   grid.first = first * grid.decimate;
@@ -125,7 +141,7 @@ EpochGrid make_grid(const Recording& recording, const TrialOptions& options) {
     const auto [begin, end] = multiples_in(from_s, to_s, 1 / rate);
     const Index low = std::max(begin, grid.first),
                 high = std::min(end, grid.first + grid.count - 1);
-    if (high < low)
+    if (end < begin || high < low)
       problems.push_back(fmt::format(
           "the baseline, {:g} to {:g} ms, holds no sample of the epoch, {:g} to {:g} ms.",
           from_s / kMillisecond, to_s / kMillisecond, options.from_s / kMillisecond,
