@@ -17,7 +17,7 @@ namespace headwater {
 
 struct EdfSignal {
   std::string label;  ///< as it stands in the header, blanks at its ends removed
-  std::string unit;   ///< physical dimension, same
+  std::string unit;   ///< physical dimension, same; a micro sign in any encoding is UTF-8's
   double scale = 1;   ///< physical = scale * digital + offset
   double offset = 0;
   std::int64_t samples_per_record = 0;
@@ -39,10 +39,11 @@ class EdfFile {
   /// missing or not a regular file; shorter than its header; a header field that is no number or
   /// not printable ASCII; no signals; header length other than 256 (signals + 1); no records, or
   /// more or fewer than the file holds (-1, a recording that was not closed: the records there
-  /// are); records of no duration with samples in them; no samples; physical or digital minimum
-  /// equal to the maximum; EDF+ without annotations signal, a record without time-stamp, stamps
-  /// that go back, stamps of EDF+C that leave gaps; an annotation without onset. No allocation is
-  /// larger than the file.
+  /// are); records of no duration with samples in them; no samples; physical minimum equal to the
+  /// maximum, digital not below it or beyond 16 bits; EDF+ without annotations signal, or such a
+  /// signal in plain EDF; a record without time-stamp, stamps that go back, stamps of EDF+C that
+  /// leave gaps (half a sample is let pass as rounding); an annotation without onset. No allocation
+  /// is larger than the file (8 bytes for each record's onset apart).
   explicit EdfFile(const std::filesystem::path& path);
   ~EdfFile();
   EdfFile(EdfFile&&) noexcept;

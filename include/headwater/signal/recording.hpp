@@ -1,7 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // One recording with its BIDS side files: an EDF file, and beside it - under the same name with
 // "_eeg.edf" replaced - _channels.tsv, _events.tsv and _eeg.json (one of a higher folder of the
-// data set counts too, the nearest wins: the inheritance principle of BIDS). Each is optional.
+// data set counts too, the nearest wins, of _eeg.json key by key: the inheritance principle of
+// BIDS). Each is optional.
 #pragma once
 #include <headwater/base/edf.hpp>
 #include <headwater/base/labels.hpp>
@@ -18,7 +19,8 @@ namespace headwater {
 /// A channel of a recording.
 struct RecordingChannel {
   std::string name;           ///< cleaned: clean_lead_name
-  std::string type = "EEG";   ///< BIDS type; EEG where _channels.tsv says nothing
+  std::string type = "EEG";   ///< BIDS type, upper case; where _channels.tsv says nothing, EEG,
+                              ///< or what the label begins with ("EOG left")
   double volts_per_unit = 0;  ///< of the header's physical unit
   double sampling_Hz = 0;
   std::string set_aside;  ///< why it is no lead of the analysis ("type EOG", "marked bad: ...");
@@ -40,7 +42,8 @@ class Recording {
   /// Channels of other types than EEG, marked bad, without voltage unit, or at another sampling
   /// rate than most EEG channels are set aside, with the reason. Units: uV (in any spelling: "uV",
   /// "µV", "microV"), mV, V, nV, from the header; where _channels.tsv states another voltage unit
-  /// the header wins, since it carries the scaling, and a note says so. Values whose typical size
+  /// the header wins, since it carries the scaling, and a note says so; where the header has no
+  /// unit that of _channels.tsv is taken, with a note. Values whose typical size
   /// (median over channels of the robust spread, 1.4826 MAD, over at most 60 s spread through the
   /// recording) is far from EEG's (0.5 to 500 uV) cause a note naming the unit that would fit; they
   /// are not rescaled. Errors (InputError): those of EdfFile and of the tables; names repeated
@@ -61,15 +64,18 @@ class Recording {
   const Labels& notes() const { return notes_; }
   const std::vector<std::filesystem::path>& files() const { return files_; }
 
-  /// Samples [first, first + count) of a channel in V to out[0], out[stride], ...
+  /// Samples [first, first + count) of a channel in V to out[0], out[stride], ... Throws
+  /// std::logic_error outside the recording, or of a channel without voltage unit.
   void read(std::size_t channel, Eigen::Index first, Eigen::Index count, double* out,
             Eigen::Index stride = 1) const;
 
  private:
+  void read_side_facts();  // _eeg.json; then segments_
+  void check_size();       // of the values, against their unit
+
   std::string source_;
   EdfFile edf_;
   std::vector<RecordingChannel> channels_;
-  std::vector<std::size_t> signal_;  // of each channel
   double sampling_Hz_ = 0;
   std::vector<RecordingSegment> segments_;
   Table events_;
@@ -79,7 +85,9 @@ class Recording {
 };
 
 /// The side file of a recording: the nearest that BIDS' inheritance principle allows, or empty.
-/// `suffix`: "channels.tsv", "events.tsv", "eeg.json", "electrodes.tsv", "coordsystem.json".
+/// `suffix`: "channels.tsv", "events.tsv", "eeg.json", "electrodes.tsv", "coordsystem.json"; the
+/// last two may also have a part "space-..." in their name. Throws InputError where two files of
+/// one folder fit equally well.
 std::filesystem::path side_file(const std::filesystem::path& recording, const std::string& suffix);
 
 }  // namespace headwater
