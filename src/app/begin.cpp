@@ -68,7 +68,7 @@ std::vector<RecordingSet> find_recordings(const fs::path& folder) {
   return found;
 }
 
-std::string quoted(const std::string& text) {
+std::string in_quotes(const std::string& text) {
   std::string result = "\"";
   for (const char letter : text) {
     if (letter == '"' || letter == '\\') result += '\\';
@@ -77,9 +77,9 @@ std::string quoted(const std::string& text) {
   return result + '"';
 }
 
-std::string quoted_list(const Labels& labels) {
+std::string listed(const Labels& labels) {
   Labels parts;
-  for (const auto& label : labels) parts.push_back(quoted(label));
+  for (const auto& label : labels) parts.push_back(in_quotes(label));
   return fmt::format("[{}]", fmt::join(parts, ", "));
 }
 
@@ -142,10 +142,10 @@ std::string participants_section(const fs::path& folder, const std::string& star
   for (const auto& row : list.rows)
     if (!set.of_participant.contains(row[*column])) without.push_back(row[*column]);
   if (!without.empty()) note += fmt::format("Without a recording: {}.\n", join_labels(without));
-  return fmt::format("[participants]\ntable = {}\n{}\n", quoted(start + "participants.tsv"),
-                     without.empty() ? ""
-                                     : fmt::format("leave_out = {}   # no such recording\n",
-                                                   quoted_list(without)));
+  return fmt::format("[participants]\ntable = {}\n{}\n", in_quotes(start + "participants.tsv"),
+                     without.empty()
+                         ? ""
+                         : fmt::format("leave_out = {}   # no such recording\n", listed(without)));
 }
 
 std::string trials_section(const Recording& recording, const std::string& pattern) {
@@ -153,7 +153,7 @@ std::string trials_section(const Recording& recording, const std::string& patter
   double shortest = segments[0].count > 0 ? static_cast<double>(segments[0].count) : 0;
   for (const auto& segment : segments)
     shortest = std::min(shortest, static_cast<double>(segment.count));
-  std::string text = fmt::format("[trials]\nrecording = {}\n", quoted(pattern));
+  std::string text = fmt::format("[trials]\nrecording = {}\n", in_quotes(pattern));
   if (segments.size() > 1 && shortest / recording.sampling_Hz() < 5) {
     const double last_ms = std::floor(1000 * (shortest - 1) / recording.sampling_Hz());
     text += fmt::format(
@@ -183,13 +183,13 @@ std::string montage_section(const Recording& recording, const std::string& start
     for (auto at = path.find(who); at != std::string::npos; at = path.find(who, at + 13))
       path.replace(at, who.size(), "{participant}");
     text += fmt::format("positions = {}\nspace = \"own\"               # fitted to the head\n",
-                        quoted(start + path));
+                        in_quotes(start + path));
   } else {
     text += "positions = \"standard\"      # by the names of the 10-20, 10-10 and 10-5 systems\n";
     if (!unknown.empty()) {
       text +=
           fmt::format("drop = {}   # names without a standard place: rename them if you know it\n",
-                      quoted_list(unknown));
+                      listed(unknown));
       note += fmt::format("Left out, no standard place: {}.\n", join_labels(unknown));
     }
   }
@@ -199,7 +199,7 @@ std::string montage_section(const Recording& recording, const std::string& start
   const std::string reference = reference_site(recording);
   if (!reference.empty())
     text += fmt::format("zero = [{}]                # the recording reference, restored\n",
-                        quoted(reference));
+                        in_quotes(reference));
   else
     text += fmt::format(
         "# zero = [\"FCz\"]            # the recording reference, where it is a site of its own "
@@ -216,7 +216,7 @@ std::string conditions_section(const EventSummary& events) {
   for (const auto& [type, count] : events.types) {
     const bool active = shown++ < 8;
     text += fmt::format("{0}[[conditions]]\n{0}name = {1}   # {2} events in all\n\n",
-                        active ? "" : "# ", quoted(type), count);
+                        active ? "" : "# ", in_quotes(type), count);
   }
   if (events.types.size() >= 2) {
     const auto& often = events.types.front().first;
@@ -225,7 +225,7 @@ std::string conditions_section(const EventSummary& events) {
         "# The rarest minus the most frequent: change it to what you ask.\n[[contrasts]]\nname = "
         "{}\n"
         "weights = {{ {} = 1, {} = -1 }}\n\n",
-        quoted(seldom + " minus " + often), quoted(seldom), quoted(often));
+        in_quotes(seldom + " minus " + often), in_quotes(seldom), in_quotes(often));
   }
   if (!events.number_columns.empty()) {
     const auto& column = events.number_columns.front();
@@ -235,7 +235,7 @@ std::string conditions_section(const EventSummary& events) {
         "# of an ideal observer who follows it:\n"
         "# [observer]\n# value = {}\n# [regression]\n# predictors = [\"surprise\"]\n"
         "# [[contrasts]]\n# name = \"surprise\"\n# predictor = \"surprise\"\n\n",
-        fmt::join(events.number_columns, ", "), quoted(column));
+        fmt::join(events.number_columns, ", "), in_quotes(column));
   }
   return text;
 }
@@ -273,7 +273,7 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
       "# not meant so, then: headwater inspect {0}\n# `headwater keys` explains every key. Paths "
       "are "
       "relative to this file.\n\ntitle = {1}\noutput = \"results\"\n\n",
-      file.filename().string(), quoted(title));
+      file.filename().string(), in_quotes(title));
   begun.text += participants_section(root, start, set, note);
   if (!others.empty()) begun.text += "# Other recordings in the folder:\n" + others;
   begun.text += trials_section(recording, start + set.pattern);
