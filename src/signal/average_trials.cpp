@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
+#include <headwater/base/distributions.hpp>
 #include <headwater/base/error.hpp>
 #include <headwater/base/units.hpp>
 #include <headwater/signal/trials.hpp>
@@ -16,19 +17,9 @@ using Index = Eigen::Index;
 
 constexpr double kUnequalCounts = 1.5;
 
-/// z with P(Z > z) = share, 0 < share < 1/2: bisection, to the last bits.
-double upper_quantile(double share) {
-  double low = 0, high = 40;
-  for (int k = 0; k < 80; ++k) {
-    const double middle = (low + high) / 2;
-    (std::erfc(middle / std::sqrt(2.0)) / 2 > share ? low : high) = middle;
-  }
-  return low;
-}
-
 /// Variance of the plain mean over that of the trimmed one, for normal noise.
 double efficiency(double share) {
-  const double z = upper_quantile(share);
+  const double z = -normal_quantile(share);
   const double density = std::exp(-z * z / 2) / std::sqrt(2 * kPi);
   const double left = 1 - 2 * share;
   return left * left / (left - 2 * z * density + 2 * share * z * z);
