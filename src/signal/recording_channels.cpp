@@ -49,9 +49,20 @@ std::string type_in_label(std::string_view label) {
   return "EEG";
 }
 
-/// Row of _channels.tsv of each signal.
-std::vector<std::size_t> join_rows(const std::string& source, const Labels& names,
-                                   const Table& table) {
+/// Some labels are bare numbers, which name no lead, and are not in the table: what wrote the
+/// header counted where it should have named. The table lists as many channels, and BIDS has them
+/// in the order of the recording.
+bool numbered_labels(const Labels& names, const Labels& listed) {
+  return names.size() == listed.size() &&
+         std::any_of(names.begin(), names.end(), [&](const std::string& name) {
+           return name.find_first_not_of("0123456789") == std::string::npos &&
+                  !find_label_any_case(listed, name);
+         });
+}
+
+/// Row of _channels.tsv of each signal; `names` become the table's where the labels are numbers.
+std::vector<std::size_t> join_rows(const std::string& source, const Table& table, Labels& names,
+                                   Labels& notes) {
   const std::size_t column = table.column("name");
   Labels listed;
   std::vector<std::size_t> row_of;
@@ -65,6 +76,13 @@ std::vector<std::size_t> join_rows(const std::string& source, const Labels& name
   const Labels repeated = repeated_labels(listed);
   if (!repeated.empty())
     problems.push_back("names listed more than once: " + join_labels(repeated));
+  if (repeated.empty() && numbered_labels(names, listed)) {
+    notes.push_back(fmt::format(
+        "the EDF header's labels are no names of leads ('{}', '{}', ...): the names of {} are "
+        "used, in their order. Check one channel against what is known of it.",
+        names[0], names[1], table.source));
+    names = listed;
+  }
   std::vector<std::size_t> rows;
   Labels missing, extra;
   for (const auto& name : names) {
@@ -177,9 +195,9 @@ std::optional<double> volts_per_unit(std::string_view unit) {
 
 std::vector<RecordingChannel> describe_channels(const std::string& source, const EdfFile& edf,
                                                 const Table* table, Labels& notes) {
-  const Labels names = checked_names(source, edf);
+  Labels names = checked_names(source, edf);
   const std::vector<std::size_t> rows =
-      table ? join_rows(source, names, *table) : std::vector<std::size_t>();
+      table ? join_rows(source, *table, names, notes) : std::vector<std::size_t>();
   std::vector<RecordingChannel> channels;
   std::map<std::string, Labels> unit_notes, rate_notes;
   for (std::size_t i = 0; i < names.size(); ++i) {
