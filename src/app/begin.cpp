@@ -256,6 +256,7 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
         edf.string()));
   const fs::path here = fs::absolute(file).lexically_normal().parent_path();
   std::string start = root.lexically_relative(here).generic_string();
+  if (start.starts_with("../..")) start = root.generic_string();
   start = start.empty() || start == "." ? "" : start + "/";
 
   std::string title = root.filename().string();

@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The indicator columns need no arithmetic: a coefficient beside them is that of the regressors
-// centred within conditions (Frisch & Waugh 1933 Econometrica 1:387), whichever mean was taken from
-// them first. So options.within_conditions decides about the unit and the inflation only.
+// centred within the groups that they indicate (Frisch & Waugh 1933 Econometrica 1:387).
 #include "regression_design.hpp"
 
 #include "problems.hpp"
@@ -43,8 +42,9 @@ double value_of(const Regressor& regressor, std::size_t event_row) {
 /// Picks the trials of the chosen conditions in which every regressor has a value; returns their
 /// values, n by R.
 Eigen::MatrixXd choose_trials(Design& design, const Trials& trials,
-                              const std::vector<Regressor>& regressors, const Labels& conditions) {
-  const std::vector<bool> chosen = chosen_conditions(trials, conditions);
+                              const std::vector<Regressor>& regressors,
+                              const RegressionOptions& options) {
+  const std::vector<bool> chosen = chosen_conditions(trials, options.conditions);
   const auto columns = static_cast<Eigen::Index>(regressors.size());
   std::vector<Eigen::Index> without(regressors.size(), 0), groups(chosen.size(), -1);
   std::vector<double> sizes;
@@ -64,8 +64,9 @@ Eigen::MatrixXd choose_trials(Design& design, const Trials& trials,
     }
     if (!complete) continue;
     if (groups[condition] < 0) {
-      groups[condition] = static_cast<Eigen::Index>(sizes.size());
-      sizes.push_back(0);
+      groups[condition] =
+          options.within_conditions ? static_cast<Eigen::Index>(sizes.size()) : Eigen::Index{0};
+      if (options.within_conditions || sizes.empty()) sizes.push_back(0);
     }
     ++sizes[static_cast<std::size_t>(groups[condition])];
     design.group.push_back(groups[condition]);
@@ -141,7 +142,7 @@ Design make_design(const Trials& trials, const std::vector<Regressor>& regressor
                    const RegressionOptions& options) {
   if (regressors.empty()) throw ExperimentError("Regression: no regressor is given.");
   Design design;
-  const Eigen::MatrixXd values = choose_trials(design, trials, regressors, options.conditions);
+  const Eigen::MatrixXd values = choose_trials(design, trials, regressors, options);
   const Eigen::Index columns = design.groups() + values.cols();
   if (design.count() < columns + kSpareTrials)
     throw InputError(problem_list(
@@ -156,10 +157,8 @@ Design make_design(const Trials& trials, const std::vector<Regressor>& regressor
   centre_in_groups(within, design);
   refuse_constants(values, overall, within, regressors);
   refuse_combinations(within, regressors);
-  const Eigen::MatrixXd& centred = options.within_conditions ? within : overall;
-  const Eigen::Index means = options.within_conditions ? design.groups() : 1;
-  design.deviation =
-      centred.colwise().norm() / std::sqrt(static_cast<double>(design.count() - means));
+  const auto degrees = static_cast<double>(design.count() - design.groups());
+  design.deviation = within.colwise().norm() / std::sqrt(degrees);
   within.array().rowwise() /= design.deviation.transpose().array();
   const Eigen::HouseholderQR<Eigen::MatrixXd> qr(within);
   design.q = qr.householderQ() * Eigen::MatrixXd::Identity(within.rows(), within.cols());
@@ -168,13 +167,12 @@ Design make_design(const Trials& trials, const std::vector<Regressor>& regressor
                        .triangularView<Eigen::Upper>()
                        .solve(Eigen::MatrixXd::Identity(within.cols(), within.cols()));
   // [X'X]_jj [(X'X)^-1]_jj; the scaled regressor's sum of squares is the divisor's.
-  design.inflation = static_cast<double>(design.count() - means) * design.variance();
+  design.inflation = degrees * design.variance();
   for (Eigen::Index j = 0; j < values.cols(); ++j)
     if (design.inflation[j] > kWorthANote)
-      design.notes.push_back(fmt::format(
-          "regressor '{}' is largely made up of the others{}: variance inflation {:.1f}",
-          regressors[static_cast<std::size_t>(j)].name,
-          options.within_conditions ? "" : " and the conditions", design.inflation[j]));
+      design.notes.push_back(
+          fmt::format("regressor '{}' is largely made up of the others: variance inflation {:.1f}",
+                      regressors[static_cast<std::size_t>(j)].name, design.inflation[j]));
   return design;
 }
 

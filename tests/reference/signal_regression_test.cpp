@@ -35,11 +35,12 @@ struct Case {
   }
 };
 
-/// [indicators | regressors centred and divided], long double throughout.
+/// [indicators or one constant | regressors centred and divided], long double throughout.
 Wide design(const Case& work, bool within) {
   const auto n = work.trials.condition.size();
-  Wide x(n, std::vector<long double>(6, 0));
-  for (std::size_t i = 0; i < n; ++i) x[i][work.trials.condition[i]] = 1;
+  const std::size_t groups = within ? 3 : 1;
+  Wide x(n, std::vector<long double>(groups + 3, 0));
+  for (std::size_t i = 0; i < n; ++i) x[i][within ? work.trials.condition[i] : 0] = 1;
   for (std::size_t j = 0; j < 3; ++j) {
     long double squares = 0;
     for (std::size_t i = 0; i < n; ++i) {
@@ -49,11 +50,11 @@ Wide design(const Case& work, bool within) {
           sum += work.values(static_cast<Index>(k), static_cast<Index>(j));
           count += 1;
         }
-      x[i][3 + j] = work.values(static_cast<Index>(i), static_cast<Index>(j)) - sum / count;
-      squares += x[i][3 + j] * x[i][3 + j];
+      x[i][groups + j] = work.values(static_cast<Index>(i), static_cast<Index>(j)) - sum / count;
+      squares += x[i][groups + j] * x[i][groups + j];
     }
-    const long double sd = std::sqrt(squares / static_cast<long double>(n - (within ? 3 : 1)));
-    for (std::size_t i = 0; i < n; ++i) x[i][3 + j] /= sd;
+    const long double sd = std::sqrt(squares / static_cast<long double>(n - groups));
+    for (std::size_t i = 0; i < n; ++i) x[i][groups + j] /= sd;
   }
   return x;
 }
@@ -62,6 +63,7 @@ void compare(const Case& work, bool within, double tolerance) {
   const RegressionResult found = regress(work.trials, work.regressors, {{}, within}, 0);
   const Wide x = design(work, within);
   const Index channels = work.trials.data_V.rows();
+  const std::size_t groups = within ? 3 : 1;
   ASSERT_EQ(found.beta_V.size(), 3u);
   for (Index t = 0; t < work.trials.times_s.size(); ++t)
     for (Index c = 0; c < channels; ++c) {
@@ -73,10 +75,11 @@ void compare(const Case& work, bool within, double tolerance) {
       }
       const reference::Fit fit = reference::least_squares(x, y);
       for (std::size_t j = 0; j < 3; ++j) {
-        const auto se = static_cast<double>(fit.standard_errors[3 + j]);
+        const auto se = static_cast<double>(fit.standard_errors[groups + j]);
         EXPECT_NEAR(found.standard_error_V[j](c, t) / se, 1, tolerance);
-        EXPECT_NEAR((found.beta_V[j](c, t) - static_cast<double>(fit.coefficients[3 + j])) / se, 0,
-                    tolerance);
+        EXPECT_NEAR(
+            (found.beta_V[j](c, t) - static_cast<double>(fit.coefficients[groups + j])) / se, 0,
+            tolerance);
       }
     }
 }
@@ -97,13 +100,14 @@ TEST(SignalRegression, EffectiveTrialsAndInflationComeFromTheInverse) {
     const Case work;
     const RegressionResult found = regress(work.trials, work.regressors, {{}, within}, 0);
     const Wide x = design(work, within);
-    Wide gram(6, std::vector<long double>(6, 0));
+    const std::size_t columns = within ? 6 : 4;
+    Wide gram(columns, std::vector<long double>(columns, 0));
     for (const auto& row : x)
-      for (std::size_t j = 0; j < 6; ++j)
-        for (std::size_t k = 0; k < 6; ++k) gram[j][k] += row[j] * row[k];
+      for (std::size_t j = 0; j < columns; ++j)
+        for (std::size_t k = 0; k < columns; ++k) gram[j][k] += row[j] * row[k];
     const Wide solved = reference::inverse(gram);
     for (Index j = 0; j < 3; ++j) {
-      const auto at = static_cast<std::size_t>(3 + j);
+      const auto at = columns - 3 + static_cast<std::size_t>(j);
       EXPECT_NEAR(found.effective_trials[j] * static_cast<double>(solved[at][at]), 1, 1e-12);
       // Variance inflation as it is defined: the regressor regressed on all other columns.
       Wide others = x;
@@ -117,7 +121,8 @@ TEST(SignalRegression, EffectiveTrialsAndInflationComeFromTheInverse) {
       const reference::Fit fit = reference::least_squares(others, y);
       for (std::size_t i = 0; i < y.size(); ++i) {
         long double residual = y[i];
-        for (std::size_t k = 0; k < 5; ++k) residual -= others[i][k] * fit.coefficients[k];
+        for (std::size_t k = 0; k + 1 < columns; ++k)
+          residual -= others[i][k] * fit.coefficients[k];
         left += residual * residual;
       }
       EXPECT_NEAR(found.inflation[j] * static_cast<double>(left / squares), 1, 1e-12);

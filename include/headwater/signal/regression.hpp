@@ -1,12 +1,12 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // Regression of single trials on regressors, sample by sample (Smith & Kutas 2015 Psychophysiology
 // 52:157): Y = X beta + E, least squares, with X = [one indicator column for each condition | the
-// regressors, each centred over the trials used (or, with within_conditions, over those of its
-// condition) and divided by the standard deviation of what this leaves (divisor: trials less the
-// means taken)]. beta of a regressor: V per standard deviation, all other columns held fixed. Its
-// noise: C_trial [(X'X)^-1]_jj, so that its effective number of trials is 1 / [(X'X)^-1]_jj.
-// Inflation 1/(1-R^2), R^2 of the regressor on the others (within conditions), or on the others and
-// the conditions.
+// regressors, each centred over the trials of its condition and divided by the standard deviation
+// of what this leaves (divisor: trials less the means taken)]. Without within_conditions the trials
+// are one group: one constant column, regressors centred over all, so that differences between
+// conditions count as theirs. beta of a regressor: V per standard deviation, all other columns held
+// fixed. Its noise: C_trial [(X'X)^-1]_jj, so that its effective number of trials is 1 /
+// [(X'X)^-1]_jj. Inflation 1/(1-R^2), R^2 of the regressor on the others.
 #pragma once
 #include <headwater/signal/contrast.hpp>
 #include <headwater/signal/trials.hpp>
