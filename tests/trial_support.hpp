@@ -1,65 +1,59 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-// Small invented recordings with events, for tests of trials.
+// Invented single trials, built by hand.
 #pragma once
-#include "base_scratch.hpp"
-#include "lead_support.hpp"
+#include "signal_support.hpp"
 
-#include <headwater/base/atomic_file.hpp>
-#include <headwater/base/edf_writing.hpp>
 #include <headwater/signal/trials.hpp>
 
-#include <fmt/core.h>
-
-#include <string>
 #include <utility>
-#include <vector>
 
 namespace headwater {
 
-inline Montage standard_cap_montage(const Labels& labels) {
-  return standard_montage(labels, 0.092);
+/// Noise trials, V: at each sample factor * N(0, I), independent of the samples beside it. Times 4
+/// ms apart from from_s on; conditions in turns until each has its number; event rows 3, 5, 7, ...
+inline Trials noise_trials(RandomStream& random, const Eigen::MatrixXd& factor,
+                           std::vector<int> numbers, Eigen::Index samples, double from_s) {
+  Trials trials;
+  trials.channels = numbered_channels(factor.rows());
+  trials.times_s =
+      Eigen::VectorXd::LinSpaced(samples, from_s, from_s + 4e-3 * static_cast<double>(samples - 1));
+  for (std::size_t c = 0; c < numbers.size(); ++c)
+    trials.conditions.push_back(fmt::format("condition{}", c));
+  for (bool more = true; more;) {
+    more = false;
+    for (std::size_t c = 0; c < numbers.size(); ++c) {
+      if (numbers[c]-- <= 0) continue;
+      more = true;
+      trials.event_row.push_back(3 + 2 * trials.condition.size());
+      trials.condition.push_back(c);
+    }
+  }
+  trials.data_V = factor * random.normal_matrix(factor.cols(), samples * trials.count());
+  return trials;
 }
 
-/// 20 s at 200 Hz of background at 32 leads; 18 events, a second apart, of kinds a, b, a, b, ...;
-/// the data may be changed before they are written.
-struct InventedRecording : Scratch {
-  static constexpr int rate = 200, seconds = 20;
-  Labels names = thirty_two_leads();
-  Eigen::MatrixXd data_uV;
-  std::string events = "onset\tduration\ttrial_type\tvalue\n";
-  std::vector<double> onsets_s;
-
-  InventedRecording() {
-    RandomStream random(6, "invented recording");
-    data_uV = 1e6 * background(standard_cap_montage(names), 1, rate * seconds, random);
-    for (int k = 0; k < 18; ++k) add_event(1 + k, k % 2 == 0 ? "a" : "b", k % 3);
-  }
-  void add_event(double onset_s, const std::string& kind, double value) {
-    onsets_s.push_back(onset_s);
-    events += fmt::format("{}\t0\t{}\t{}.0\n", onset_s, kind, value);
-  }
-  Eigen::Index place(const std::string& name) const { return *find_label(names, name); }
-  std::filesystem::path file() const { return folder / "rec_eeg.edf"; }
-  Recording write() const {
-    write_edf(file(), names, rate, data_uV, {});
-    write_file(folder / "rec_events.tsv", events);
-    return Recording(file());
-  }
-  /// Half a step of the file's numbers, V.
-  double rounding_V() const { return 0.5e-6 * std::ceil(data_uV.cwiseAbs().maxCoeff()) / 32767; }
-};
-
-inline std::vector<EventChoice> kinds_a_and_b() {
-  return {{"A", {{"trial_type", "a"}}}, {"B", {{"trial_type", "b"}}}};
+/// One value for each event of noise_trials(), n/a between them.
+inline Eigen::VectorXd of_events(const Trials& trials, const Eigen::VectorXd& of_trial) {
+  Eigen::VectorXd values = Eigen::VectorXd::Constant(
+      static_cast<Eigen::Index>(trials.event_row.back()) + 2, std::nan(""));
+  for (std::size_t k = 0; k < trials.event_row.size(); ++k)
+    values[static_cast<Eigen::Index>(trials.event_row[k])] = of_trial[static_cast<Eigen::Index>(k)];
+  return values;
 }
 
-/// Cuts only: no lead is looked for.
-inline TrialOptions plain_cut(double from_s, double to_s) {
-  TrialOptions options;
-  options.from_s = from_s;
-  options.to_s = to_s;
-  options.leads.find = false;
-  return options;
+/// Keeps the trials of which the places are listed.
+inline Trials pick_trials(const Trials& trials, const std::vector<Eigen::Index>& places) {
+  Trials picked = trials;
+  picked.condition.clear();
+  picked.event_row.clear();
+  const Eigen::Index samples = trials.times_s.size();
+  picked.data_V.resize(trials.data_V.rows(), samples * static_cast<Eigen::Index>(places.size()));
+  for (const Eigen::Index place : places) {
+    picked.data_V.middleCols(picked.count() * samples, samples) = trials.trial(place);
+    picked.condition.push_back(trials.condition[static_cast<std::size_t>(place)]);
+    picked.event_row.push_back(trials.event_row[static_cast<std::size_t>(place)]);
+  }
+  return picked;
 }
 
 }  // namespace headwater

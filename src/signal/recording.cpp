@@ -153,10 +153,10 @@ double median(std::vector<double>& values) {
 }
 
 /// 1.4826 MAD of a channel in V: deviations from the median of each second, so that slow drifts of
-/// amplifiers without a high-pass count for nothing, over at most 60 seconds spread through the
-/// recording.
+/// amplifiers without a high-pass count for nothing, over at most 12 seconds spread through the
+/// recording: orders of magnitude are asked for, and opening must cost less than reading.
 double robust_spread_V(const Recording& recording, std::size_t channel, Eigen::Index samples) {
-  constexpr Eigen::Index kPieces = 60;
+  constexpr Eigen::Index kPieces = 12;
   const auto second = std::clamp<Eigen::Index>(std::lround(recording.sampling_Hz()), 1, samples);
   const Eigen::Index pieces = std::min(kPieces, samples / second);
   std::vector<double> piece(static_cast<std::size_t>(second)), deviations;

@@ -49,20 +49,62 @@ std::string type_in_label(std::string_view label) {
   return "EEG";
 }
 
-/// Some labels are bare numbers, which name no lead, and are not in the table: what wrote the
-/// header counted where it should have named. The table lists as many channels, and BIDS has them
-/// in the order of the recording.
-bool numbered_labels(const Labels& names, const Labels& listed) {
-  return names.size() == listed.size() &&
-         std::any_of(names.begin(), names.end(), [&](const std::string& name) {
-           return name.find_first_not_of("0123456789") == std::string::npos &&
-                  !find_label_any_case(listed, name);
-         });
+/// Whether labels are a list of numbered names, (0, a), (1, b), ..., run together and cut to the
+/// number of signals: "0", "a", "1", "b", ... A writer's slip that real files have; the labels are
+/// then those of other signals.
+bool are_numbered_pairs(const Labels& names) {
+  if (names.size() < 4) return false;
+  for (std::size_t i = 0; i < names.size(); i += 2)
+    if (names[i] != std::to_string(i / 2)) return false;
+  return true;
 }
 
-/// Row of _channels.tsv of each signal; `names` become the table's where the labels are numbers.
-std::vector<std::size_t> join_rows(const std::string& source, const Table& table, Labels& names,
-                                   Labels& notes) {
+/// Whether every label is a bare number: what wrote the header counted and named nothing.
+bool only_count(const Labels& names) {
+  return std::all_of(names.begin(), names.end(), [](const std::string& name) {
+    return !name.empty() && name.find_first_not_of("0123456789") == std::string::npos;
+  });
+}
+
+/// Takes the names from the rows of the table, in their order, where the header's labels are known
+/// to name nothing: the only place where rows are not joined by name. Numbered pairs themselves say
+/// that signal k is called b_k; the table must say the same for each pair that is left, and then
+/// also names the signals whose pairs were cut off. Any other label that is no number is believed.
+void mend_labels(const std::string& source, const Table* table, Labels& names, Labels& notes) {
+  const bool pairs = are_numbered_pairs(names);
+  if (!pairs && !(table && only_count(names))) return;
+  Labels rows;
+  if (table)
+    for (const auto& row : table->rows) rows.push_back(clean_lead_name(row[table->column("name")]));
+  for (std::size_t i = 0; i < names.size(); i += pairs ? 2 : 1)
+    if (find_label(rows, names[i])) return;  // a table that knows these names is believed
+  bool agrees = rows.size() == names.size() && repeated_labels(rows).empty();
+  if (pairs)
+    for (std::size_t i = 1; agrees && i < names.size(); i += 2) agrees = rows[i / 2] == names[i];
+  if (!agrees && pairs)
+    throw InputError(fmt::format(
+        "{}: the labels of its signals are a numbered list run together ('{}', '{}', '{}', '{}', "
+        "...): they are not the names of the signals that they stand at. A _channels.tsv is needed "
+        "whose rows name all {} signals in their order and agree with that list.",
+        source, names[0], names[1], names[2], names[3], names.size()));
+  if (!agrees) return;  // the usual message then lists what does not meet
+  if (pairs)
+    notes.push_back(fmt::format(
+        "the labels of {} are a numbered list run together ('0', '{}', '1', '{}', ...): not the "
+        "names of the signals that they stand at. The names are those of {}, in the order of its "
+        "rows, which agrees with the part of the list that the header holds.",
+        source, rows[0], rows[1], table->source));
+  else
+    notes.push_back(fmt::format(
+        "the labels of {} only count ('{}', ...): the names of {} are used, in their order. Check "
+        "one channel against what is known of it.",
+        source, names[0], table->source));
+  names = rows;
+}
+
+/// Row of _channels.tsv of each signal.
+std::vector<std::size_t> join_rows(const std::string& source, const Labels& names,
+                                   const Table& table) {
   const std::size_t column = table.column("name");
   Labels listed;
   std::vector<std::size_t> row_of;
@@ -76,13 +118,6 @@ std::vector<std::size_t> join_rows(const std::string& source, const Table& table
   const Labels repeated = repeated_labels(listed);
   if (!repeated.empty())
     problems.push_back("names listed more than once: " + join_labels(repeated));
-  if (repeated.empty() && numbered_labels(names, listed)) {
-    notes.push_back(fmt::format(
-        "the EDF header's labels are no names of leads ('{}', '{}', ...): the names of {} are "
-        "used, in their order. Check one channel against what is known of it.",
-        names[0], names[1], table.source));
-    names = listed;
-  }
   std::vector<std::size_t> rows;
   Labels missing, extra;
   for (const auto& name : names) {
@@ -196,8 +231,9 @@ std::optional<double> volts_per_unit(std::string_view unit) {
 std::vector<RecordingChannel> describe_channels(const std::string& source, const EdfFile& edf,
                                                 const Table* table, Labels& notes) {
   Labels names = checked_names(source, edf);
+  mend_labels(source, table, names, notes);
   const std::vector<std::size_t> rows =
-      table ? join_rows(source, *table, names, notes) : std::vector<std::size_t>();
+      table ? join_rows(source, names, *table) : std::vector<std::size_t>();
   std::vector<RecordingChannel> channels;
   std::map<std::string, Labels> unit_notes, rate_notes;
   for (std::size_t i = 0; i < names.size(); ++i) {

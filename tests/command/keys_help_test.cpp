@@ -17,7 +17,7 @@
 namespace headwater {
 namespace {
 
-const Labels kCommands{"example", "inspect", "locate", "run", "draw", "leadfield", "keys"};
+const Labels kCommands{"example", "begin", "inspect", "locate", "run", "draw", "leadfield", "keys"};
 
 /// Lines that are not set in: the names of the keys.
 std::set<std::string> listed_keys(const std::string& text) {
@@ -62,7 +62,7 @@ TEST(CommandKeys, APartOfTheNameNarrowsTheList) {
   ASSERT_EQ(run.exit_code, 0);
   EXPECT_EQ(
       listed_keys(run.out),
-      (std::set<std::string>{"lcmv.from_ms", "lcmv.to_ms", "lcmv.table", "lcmv.regularisation",
+      (std::set<std::string>{"lcmv.from_ms", "lcmv.to_ms", "lcmv.from", "lcmv.table", "lcmv.regularisation",
                              "lcmv.output", "lcmv.orientation", "lcmv.mirror_paired"}));
   const ProgramRun none = run_program({"keys", "zzz"}, scratch.folder);
   EXPECT_EQ(none.exit_code, 2);

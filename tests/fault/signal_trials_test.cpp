@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // What cannot be cut, and what is said of it.
-#include "trial_support.hpp"
+#include "invented_recording.hpp"
 
 #include <headwater/base/error.hpp>
 

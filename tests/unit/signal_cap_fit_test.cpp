@@ -251,6 +251,23 @@ TEST(SignalCapFit, ExchangedLabelsAreNamedAndDoNotPull) {
   }
 }
 
+// Threes of labels moved on by one place pull, unlike two exchanged; 30 of 64 are wrong here.
+TEST(SignalCapFit, ManyWrongLabelsAreNamedAndDoNotPull) {
+  DigitisedCap cap = standard_cap(kSixtyFour);
+  const Eigen::Matrix3Xd truth = cap.electrodes.positions;
+  for (Eigen::Index k = 0; k < 10; ++k) {
+    cap.electrodes.positions.col(k) = truth.col(k + 20);
+    cap.electrodes.positions.col(k + 20) = truth.col(k + 40);
+    cap.electrodes.positions.col(k + 40) = truth.col(k);
+  }
+  const Motion motion;
+  move(cap, motion);
+  const CapFit fit = fit_cap(cap);
+  EXPECT_LT((fit.rotation - motion.rotation.transpose()).norm(), 1e-12);
+  EXPECT_EQ(fit.outliers.size(), 30u);
+  EXPECT_FALSE(fit.mirrored || fit.reversed);
+}
+
 TEST(SignalCapFit, ElectrodesOffTheSphereAreNamedAndDoNotPull) {
   for (const double factor : {0.3, 0.8, 1.2, 30.0}) {
     DigitisedCap cap = standard_cap(kSixtyFour);

@@ -144,6 +144,46 @@ TEST(SignalRecording, OtherSamplingRatesAreSetAside) {
   EXPECT_EQ(recording.channels()[3].set_aside, "type EOG");
 }
 
+TEST(SignalRecording, LabelsRunTogetherFromANumberedListAreMended) {
+  const Scratch scratch;
+  MadeEdf made;
+  made.signals.assign(4, MadeSignal{});
+  made.data = {""};
+  const char* labels[] = {"0", "Fz", "1", "Cz"};
+  for (int i = 0; i < 4; ++i) {
+    made.signals[static_cast<std::size_t>(i)].label = labels[i];
+    made.signals[static_cast<std::size_t>(i)].physical_min = "-32768";
+    made.signals[static_cast<std::size_t>(i)].physical_max = "32767";
+    made.data[0] += edf_samples({i, 10 + i, 20 + i, 30 + i});
+  }
+  made.write(scratch.folder / "a_eeg.edf");
+  write_file(scratch.folder / "a_channels.tsv", "name\nFz\nCz\nPz\nOz\n");
+  const Recording mended(scratch.folder / "a_eeg.edf");
+  EXPECT_EQ(mended.used_names(), (Labels{"Fz", "Cz", "Pz", "Oz"}));
+  EXPECT_NE(mended.notes().at(0).find("a numbered list run together"), std::string::npos);
+  double value_V = 0;
+  mended.read(1, 0, 1, &value_V);  // Cz is the second signal, not the one that bears its name
+  EXPECT_NEAR(value_V, 1e-6, 1e-15);
+  // Leads that are called so are left alone.
+  write_file(scratch.folder / "a_channels.tsv", "name\n0\nFz\n1\nCz\n");
+  EXPECT_EQ(Recording(scratch.folder / "a_eeg.edf").used_names(), (Labels{"0", "Fz", "1", "Cz"}));
+}
+
+TEST(SignalRecording, LabelsThatOnlyCountTakeTheNamesOfTheTable) {
+  const Scratch scratch;
+  MadeEdf made;
+  made.signals.assign(2, MadeSignal{});
+  made.signals[0].label = "1";
+  made.signals[1].label = "2";
+  made.data = {edf_samples({1, 2, 3, 4, 1, 2, 3, 4})};
+  made.write(scratch.folder / "a_eeg.edf");
+  EXPECT_EQ(Recording(scratch.folder / "a_eeg.edf").used_names(), (Labels{"1", "2"}));
+  write_file(scratch.folder / "a_channels.tsv", "name\nFz\nCz\n");
+  const Recording mended(scratch.folder / "a_eeg.edf");
+  EXPECT_EQ(mended.used_names(), (Labels{"Fz", "Cz"}));
+  EXPECT_NE(mended.notes().at(0).find("only count"), std::string::npos);
+}
+
 /// Size of a recording's values, against its unit.
 std::string size_note_of(double size, const char* unit) {
   const Scratch scratch;

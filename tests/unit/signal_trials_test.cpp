@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include "trial_support.hpp"
+#include "invented_recording.hpp"
 
 #include <headwater/base/error.hpp>
 #include <headwater/base/units.hpp>

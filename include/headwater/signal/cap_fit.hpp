@@ -15,8 +15,8 @@
 // The rotation by names is taken twice, with and without reflection: a cap with left and right
 // exchanged fits its mirror image far better. What was exchanged is told by the landmarks, or else
 // by the stated axes: the nasion by more than 120 degrees about z from the front of the names
-// (reversed), or the right ear on the left of the names. A mirrored cap comes out with its exchanged
-// names where they were digitised; its outliers are those besides the exchange.
+// (reversed), or the right ear on the left of the names. A mirrored cap comes out with its
+// exchanged names where they were digitised; its outliers are those besides the exchange.
 #pragma once
 #include <headwater/base/sphere_fit.hpp>
 #include <headwater/signal/electrodes.hpp>

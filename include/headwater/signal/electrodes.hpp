@@ -46,7 +46,8 @@ enum class PositionSpace { head, mni };
 
 /// Reads `name x_mm y_mm z_mm`, or a BIDS electrodes.tsv (`name x y z`; the unit is
 /// EEGCoordinateUnits - mm, cm or m - of the coordsystem.json beside it: the file whose name has
-/// "electrodes.tsv" replaced by "coordsystem.json", or plain coordsystem.json). MNI positions
+/// "electrodes.tsv" replaced by "coordsystem.json", plain coordsystem.json, or as BIDS' inheritance
+/// allows: the nearest folder above whose file has entities of the table only). MNI positions
 /// become head-frame positions by subtracting the head's centre (0, -15.4, -2.8) mm. Rows with n/a
 /// positions are left out. Errors (InputError): repeated names, fewer than 4 positions, unit not
 /// stated, a stated unit that the numbers contradict (fitted sphere radius outside 40 to 200 mm:

@@ -44,13 +44,14 @@ class Recording {
   /// "µV", "microV"), mV, V, nV, from the header; where _channels.tsv states another voltage unit
   /// the header wins, since it carries the scaling, and a note says so; where the header has no
   /// unit that of _channels.tsv is taken, with a note. Values whose typical size
-  /// (median over channels of the robust spread, 1.4826 MAD, over at most 60 s spread through the
+  /// (median over channels of the robust spread, 1.4826 MAD, over at most 12 s spread through the
   /// recording) is far from EEG's (0.5 to 500 uV) cause a note naming the unit that would fit; they
-  /// are not rescaled. Where labels are bare numbers, which name no lead, and _channels.tsv lists
-  /// as many channels as there are, its names are taken in their order, with a note. Errors
-  /// (InputError): those of EdfFile and of the tables; names repeated after cleaning; names of
-  /// _channels.tsv that are not in the recording and the reverse (all listed); a SamplingFrequency
-  /// that differs from the header's; no EEG channel.
+  /// are not rescaled. Errors (InputError): those of EdfFile and of the tables; names repeated
+  /// after cleaning; names of _channels.tsv that are not in the recording and the reverse (all
+  /// listed). Labels that a writer has run together from a numbered list ("0", "Fp1", "1", "Fp2",
+  /// ...) stand at the wrong signals: where _channels.tsv confirms the list, its rows name the
+  /// signals in their order, and a note says so, as where all labels only count; otherwise an
+  /// error. Further errors: a SamplingFrequency that differs from the header's; no EEG channel.
   explicit Recording(const std::filesystem::path& edf);
 
   const std::string& source() const { return source_; }

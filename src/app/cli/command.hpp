@@ -41,6 +41,7 @@ std::string aligned(const OutputTable& table);
 
 /// Adds the command to the program; `outcome` receives its exit code.
 void add_example(CLI::App& program, Outcome& outcome);
+void add_begin(CLI::App& program, Outcome& outcome);
 void add_inspect(CLI::App& program, Outcome& outcome);
 void add_locate(CLI::App& program, Outcome& outcome);
 void add_run(CLI::App& program, Outcome& outcome);

@@ -24,7 +24,10 @@ void add_example(CLI::App& program, Outcome&) {
   command->callback([options] {
     write_example(options->folder, options->seed);
     if (!options->quiet)
-      fmt::print("Written: {0}\nNext: headwater run {0}/experiment.toml\n", options->folder);
+      fmt::print(
+          "Written: {0}\nNext: headwater run {0}/experiment.toml\nSingle trials: headwater run "
+          "{0}/recordings.toml\n",
+          options->folder);
   });
 }
 

@@ -3,17 +3,41 @@
 
 #include <fmt/core.h>
 
+#include <algorithm>
+#include <utility>
+
 namespace headwater::cli {
 namespace {
 
-void print_inspection(const InspectReport& report, const std::vector<LeadFinding>& findings) {
-  fmt::print("{}", aligned(inspect_table(report)));
-  bool any = false;
+std::string without(std::string text, const std::string& what) {
+  for (auto at = text.find(what); at != std::string::npos; at = text.find(what, at + 13))
+    text.replace(at, what.size(), "{participant}");
+  return text;
+}
+
+/// Notes, each once, with whom it concerns.
+void print_notes(const InspectReport& report) {
+  std::vector<std::pair<std::string, Labels>> notes;
   for (const auto& participant : report.participants)
     for (const auto& note : participant.notes) {
-      fmt::print("{}{}: {}\n", any ? "" : "\nTo know:\n", participant.name, note);
-      any = true;
+      const std::string general = without(note, participant.name);
+      auto found = std::find_if(notes.begin(), notes.end(),
+                                [&](const auto& entry) { return entry.first == general; });
+      if (found == notes.end()) found = notes.insert(found, {general, {}});
+      found->second.push_back(participant.name);
     }
+  if (!notes.empty()) fmt::print("\nTo know:\n");
+  for (const auto& [note, people] : notes)
+    fmt::print("{}: {}\n",
+               people.size() > 3 && people.size() == report.participants.size()
+                   ? fmt::format("all {}", people.size())
+                   : join_labels(people),
+               note);
+}
+
+void print_inspection(const InspectReport& report, const std::vector<LeadFinding>& findings) {
+  fmt::print("{}", aligned(inspect_table(report)));
+  print_notes(report);
   if (!findings.empty())
     fmt::print("\nWho carries more than a share of an answer (sLORETA; each left out in turn):\n");
   for (const auto& finding : findings)

@@ -18,7 +18,7 @@ int main(int argc, char** argv) {
   mallopt(M_MMAP_THRESHOLD, 1 << 30);
   mallopt(M_TRIM_THRESHOLD, 1 << 30);
 
-  CLI::App program("Locates the cortical generators of mismatch responses from EEG averages.",
+  CLI::App program("Locates the cortical generators of mismatch responses from EEG.",
                    "headwater");
   program.set_version_flag("--version", "headwater " + version() + "\n" + caution());
   program.require_subcommand(1);
@@ -26,6 +26,7 @@ int main(int argc, char** argv) {
                  caution());
   cli::Outcome outcome;
   cli::add_example(program, outcome);
+  cli::add_begin(program, outcome);
   cli::add_inspect(program, outcome);
   cli::add_locate(program, outcome);
   cli::add_run(program, outcome);
