@@ -6,6 +6,14 @@
 // (4) the baseline's mean is subtracted; (5) every n-th sample, counted from 0; (6) bad leads
 // (bad_leads.hpp) are found over all trials, then left out or interpolated; (7) trials in which a
 // remaining lead breaks a limit are rejected.
+//
+// Limits of a trial: amplitude in the average reference of the good leads; flatness and step as
+// recorded (a restored reference has neither); the first of amplitude, flatness and step that is
+// broken is the reason, by its worst lead. To judge leads by how often they break a limit,
+// amplitude is taken against the median over leads at each sample: one bad lead must not mark all,
+// as it would in the average reference or as the recording's own. Interpolated leads reject
+// nothing. Step (4) takes the mean over all recorded samples of the baseline, before some are left
+// out.
 #pragma once
 #include <headwater/signal/average.hpp>
 #include <headwater/signal/bad_leads.hpp>
@@ -78,13 +86,15 @@ struct Trials {
 using MontageOf = std::function<Montage(const Labels&)>;
 
 /// Cuts and cleans. `edits` as for averages, by the recording's cleaned names; a name of `drop`
-/// that the recording sets aside already is no error. Memory: the epochs, plus one channel's
-/// segment when filters are on. Errors (InputError): an unknown events column (lists those there),
-/// a condition without events (lists the column's values with counts) or without trials left (says
-/// why they went), an epoch of no sample, filters above half the sampling rate or (low-pass) above
-/// a third of the decimated rate, a decimation without low-pass, fewer than 8 leads left. Events of
-/// which the epoch is not wholly inside a segment are recorded as such. An event chosen by two
-/// conditions is an error. Overlapping epochs are noted.
+/// or of the bad leads that the recording sets aside already is no error. Memory: the epochs, twice
+/// while trials and leads are taken out, plus one channel's segment when filters are on. Epochs of
+/// fewer than 8 samples: no lead is looked for, with a note. Errors (InputError): an unknown events
+/// column (lists those there), a condition without events (lists the column's values with counts)
+/// or without trials left (says why they went), an epoch of no sample or longer than every segment,
+/// a baseline outside it, filters above half the sampling rate or (low-pass) above a third of the
+/// decimated rate, a decimation without low-pass, fewer than 8 leads left. Events of which the
+/// epoch is not wholly inside a segment are recorded as such. An event chosen by two conditions is
+/// an error. Overlapping epochs are noted.
 Trials cut_trials(const Recording& recording, const ChannelEdits& edits,
                   const std::vector<EventChoice>& choices, const TrialOptions& options,
                   const MontageOf& montage_of);
