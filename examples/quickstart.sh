@@ -16,11 +16,15 @@ experiment=$folder/experiment.toml
 [ -e "$experiment" ] || "$headwater" example "$folder"
 "$headwater" run "$experiment"
 "$headwater" draw "$experiment"
+# Single trials of the same story: how cortex answers to the surprise of a beat.
+"$headwater" run "$folder/recordings.toml"
+"$headwater" draw "$folder/recordings.toml"
 
 cat <<END
 
-The experiment file:  $experiment
-Tables and volumes:   $folder/results
-Pictures:             $folder/results/figures
+The experiment files: $experiment
+                      $folder/recordings.toml  (single trials)
+Tables and volumes:   $folder/results, $folder/results_recordings
+Pictures:             the folder figures in each
 Run it again:         $headwater run $experiment
 END

@@ -113,6 +113,20 @@ void form_contrasts(const Experiment& experiment, const Trials& trials, Particip
   }
 }
 
+/// Conditions with so few trials that the average is mostly noise.
+std::string few_trials(const std::vector<Average>& averages) {
+  constexpr double kFew = 10;
+  Labels few;
+  for (const auto& average : averages)
+    if (average.trials < kFew)
+      few.push_back(fmt::format("'{}' ({:.3g})", average.condition, average.trials));
+  return few.empty() ? ""
+                     : fmt::format(
+                           "few trials: {}. Averages of so few are mostly noise; believe only "
+                           "what stays when any block is left out",
+                           join_labels(few));
+}
+
 Labels fixed_leads(const std::map<std::string, Labels>& by_participant, const std::string& name) {
   const auto found = by_participant.find(name);
   return found != by_participant.end() ? found->second : Labels{};
@@ -136,8 +150,8 @@ void load_trials(const Experiment& experiment, ParticipantData& data) {
   data.leads = trials.leads;
   for (std::size_t c = 0; c < experiment.conditions.size(); ++c)
     data.averages.push_back(average_trials(trials, c, plan.trim));
-  if (const auto warning = count_warning(data.averages); !warning.empty())
-    data.notes.push_back(warning);
+  for (const auto& warning : {count_warning(data.averages), few_trials(data.averages)})
+    if (!warning.empty()) data.notes.push_back(warning);
   for (const auto& contrast : experiment.contrasts)
     for (const auto& window : windows_of(experiment, contrast.name))
       samples_in(trials.times_s, window);  // throws where there is none

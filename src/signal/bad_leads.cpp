@@ -172,8 +172,26 @@ Verdict judge(const LeadFigures& lead, const BadLeadOptions& options) {
     add(lead.spline_z / options.spline_limit,
         fmt::format("spline error {:.1f} (z {:.1f})", lead.spline_error, lead.spline_z));
   add(lead.marked / options.marked_limit,
-      fmt::format("marked in {:.0f} % of trials", 100 * lead.marked));
+      fmt::format("alone beyond limits in {:.0f} % of trials", 100 * lead.marked));
   return verdict;
+}
+
+/// Share of trials in which each lead breaks a limit while fewer than half of its neighbours do: a
+/// blink is the business of the trial, not of the frontal leads.
+Eigen::VectorXd marked_alone(const Montage& montage,
+                             const Eigen::Array<bool, Eigen::Dynamic, Eigen::Dynamic>& marked) {
+  const auto neighbours = channel_neighbours(montage);
+  Eigen::VectorXd share = Eigen::VectorXd::Zero(marked.cols());
+  for (Index lead = 0; lead < marked.cols(); ++lead) {
+    const auto& near = neighbours[at(lead)];
+    for (Index k = 0; k < marked.rows(); ++k) {
+      if (!marked(k, lead)) continue;
+      const auto with =
+          std::count_if(near.begin(), near.end(), [&](Index other) { return marked(k, other); });
+      if (near.empty() || 2 * static_cast<std::size_t>(with) < near.size()) share[lead] += 1;
+    }
+  }
+  return share / static_cast<double>(marked.rows());
 }
 
 /// Positions of the names; both lists and all problems at once.
@@ -274,12 +292,14 @@ LeadCheck check_leads(const Montage& montage, const Eigen::MatrixXd& data_V, Ind
   find_fixed(montage, options, bad, good);
   LeadCheck check;
   Indices set, out;
+  const Eigen::VectorXd alone = marked.size() > 0
+                                    ? marked_alone(montage, marked)
+                                    : Eigen::VectorXd::Zero(static_cast<Index>(count));
   for (std::size_t i = 0; i < count; ++i) {
     const auto column = static_cast<Index>(i);
     LeadFigures lead;
     lead.channel = montage.labels[i];
-    if (marked.size() > 0)
-      lead.marked = static_cast<double>(marked.col(column).count()) / static_cast<double>(trials);
+    lead.marked = alone[column];
     lead.bad = bad[i];
     if (bad[i]) lead.reason = kSaidSo;
     check.leads.push_back(lead);

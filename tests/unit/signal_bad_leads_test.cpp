@@ -117,7 +117,7 @@ TEST_F(SignalBadLeads, MarksCountAsAShareOfTrials) {
   marked.col(static_cast<Eigen::Index>(place("O1"))).head(3) = true;  // 25 %
   const LeadCheck result = check({}, marked);
   EXPECT_EQ(result.bad(), Labels{"Oz"});
-  EXPECT_EQ(result.leads[place("Oz")].reason, "marked in 33 % of trials");
+  EXPECT_EQ(result.leads[place("Oz")].reason, "alone beyond limits in 33 % of trials");
   EXPECT_DOUBLE_EQ(result.leads[place("O1")].marked, 0.25);
 }
 

@@ -7,7 +7,8 @@
 //   spline error median over trials of rms(lead - prediction) / rms(prediction), the prediction by
 //                the spherical spline through all other leads; and its robust z of the logarithm
 //                over leads
-//   marked       share of trials in which the lead breaks a limit (amplitude, flatness, step)
+//   marked       share of trials in which the lead breaks a limit (amplitude, flatness, step) while
+//                fewer than half of its neighbours do: blinks are no fault of the frontal leads
 // A lead is bad when |deviation z| > limit, or correlation < limit, or spline z > limit and spline
 // error > 1, or marked > limit. The worst lead is taken out first and the figures of the others are
 // made anew (a bad lead spoils the average reference and its neighbours' predictions), until none
