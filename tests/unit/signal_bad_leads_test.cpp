@@ -57,7 +57,7 @@ TEST_F(SignalBadLeads, NamesReasonsWithTheirFigures) {
   EXPECT_TRUE(lead.bad);
   EXPECT_GT(lead.deviation, 5);
   EXPECT_NE(lead.reason.find("deviation z"), std::string::npos);
-  EXPECT_NE(lead.reason.find("correlation 0."), std::string::npos);
+  EXPECT_NE(lead.reason.find("correlation "), std::string::npos);
   EXPECT_EQ(check().bad(), Labels{"C3"});
 }
 
