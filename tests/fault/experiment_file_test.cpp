@@ -118,7 +118,7 @@ TEST(FaultExperimentFile, EveryProblemIsToldAtOnceWithItsPlace) {
        at + "24:1: contrasts 'A b' and 'A-b' would share their files",
        at + "26:10: contrast 'A-b'",
        "factor 'beat' has no level 'evn'",
-       at + "27:1: contrast 'neither' needs either weights or an effect",
+       at + "27:1: contrast 'neither' needs one of weights, an effect or a predictor",
        at + "29:1: window 'w' ends before it begins",
        at + "36:9: 'windows[].to_ms' is text: expected a number",
        at + "37:1: windows 'w' and 'w' would share their files",
@@ -144,7 +144,7 @@ TEST(FaultExperimentFile, EveryProblemIsToldAtOnceWithItsPlace) {
 }
 
 TEST(FaultExperimentFile, WhatIsMissingIsNamed) {
-  expect_refused("", {"no [[conditions]]", "no [[windows]]", "averages.file", "averages.counts"});
+  expect_refused("", {"no [[conditions]]", "no [[windows]]", "neither [averages]", "nor [trials]"});
   expect_refused(with(kSmallExperiment, "counts = \"trials.tsv\"\n", ""),
                  {"experiment.toml:3:1: 'averages.counts' is missing"});
   expect_refused(with(kSmallExperiment, "from_ms = 80\n", ""),

@@ -18,8 +18,7 @@ int main(int argc, char** argv) {
   mallopt(M_MMAP_THRESHOLD, 1 << 30);
   mallopt(M_TRIM_THRESHOLD, 1 << 30);
 
-  CLI::App program("Locates the cortical generators of mismatch responses from EEG.",
-                   "headwater");
+  CLI::App program("Locates the cortical generators of mismatch responses from EEG.", "headwater");
   program.set_version_flag("--version", "headwater " + version() + "\n" + caution());
   program.require_subcommand(1);
   program.footer("Start with: headwater example DIR, then headwater run DIR/experiment.toml\n\n" +
