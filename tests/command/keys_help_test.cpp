@@ -60,10 +60,10 @@ TEST(CommandKeys, APartOfTheNameNarrowsTheList) {
   const Scratch scratch;
   const ProgramRun run = run_program({"keys", "lcmv"}, scratch.folder);
   ASSERT_EQ(run.exit_code, 0);
-  EXPECT_EQ(
-      listed_keys(run.out),
-      (std::set<std::string>{"lcmv.from_ms", "lcmv.to_ms", "lcmv.from", "lcmv.table", "lcmv.regularisation",
-                             "lcmv.output", "lcmv.orientation", "lcmv.mirror_paired"}));
+  EXPECT_EQ(listed_keys(run.out),
+            (std::set<std::string>{"lcmv.from_ms", "lcmv.to_ms", "lcmv.from", "lcmv.table",
+                                   "lcmv.regularisation", "lcmv.output", "lcmv.orientation",
+                                   "lcmv.mirror_paired"}));
   const ProgramRun none = run_program({"keys", "zzz"}, scratch.folder);
   EXPECT_EQ(none.exit_code, 2);
   expect_said(none.err, {"zzz"});
