@@ -54,7 +54,14 @@ void append_window(OutputTable& table, const ForwardModel& forward, const std::s
   std::vector<double> with_all;
   for (const auto& index : influence.indices) with_all.push_back(index.value);
   add_indices(with_all);
-  for (const auto& without : influence.left_out) {
+  // Those that move the answer most first, kind by kind; whatever the order of the channels.
+  std::vector<LeftOut> sorted = influence.left_out;
+  std::stable_sort(sorted.begin(), sorted.end(), [](const LeftOut& a, const LeftOut& b) {
+    if (a.kind != b.kind) return a.kind < b.kind;
+    const std::string first = mm(a.shift_m), second = mm(b.shift_m);
+    return first != second ? a.shift_m > b.shift_m : a.name < b.name;
+  });
+  for (const auto& without : sorted) {
     add(without.kind, without.name, without.point, without.shift_m, without.misfit,
         find_label(influence.carriers, without.kind + " " + without.name).has_value());
     add_indices(without.indices);

@@ -11,32 +11,31 @@
 #include <gtest/gtest.h>
 
 #include <cmath>
-#include <memory>
+#include <map>
 
 namespace headwater {
 namespace {
 
 namespace fs = std::filesystem;
 
-/// The example, written once for all tests of this file: 30 MB.
+/// The example with a lattice of 10 mm for its recordings.
 class CommandRecordings : public ::testing::Test {
  protected:
-  static void SetUpTestSuite() {
-    scratch_ = std::make_unique<Scratch>();
-    fs::create_directories(scratch_->folder / "in");
-    const ProgramRun run = run_program({"example", "example", "--quiet"}, scratch_->folder / "in");
+  void SetUp() override {
+    fs::create_directories(scratch_.folder / "in");
+    const ProgramRun run = run_program({"example", "example", "--quiet"}, scratch_.folder / "in");
     ASSERT_EQ(run.exit_code, 0) << run.err;
     const fs::path file = folder() / "recordings.toml";
     write_file(file, with(read_file(file, "experiment"), "spacing_mm = 7", "spacing_mm = 10"));
   }
-  static void TearDownTestSuite() { scratch_.reset(); }
-  static fs::path folder() { return scratch_->folder / "in" / "example"; }
-  static ProgramRun run(const std::vector<std::string>& arguments) {
+  fs::path folder() const { return scratch_.folder / "in" / "example"; }
+  ProgramRun run(const std::vector<std::string>& arguments) const {
     return run_program(arguments, folder());
   }
-  static std::unique_ptr<Scratch> scratch_;
+
+ private:
+  Scratch scratch_;
 };
-std::unique_ptr<Scratch> CommandRecordings::scratch_;
 
 double number_at(const Table& table, const std::string& column,
                  const std::map<std::string, std::string>& where) {
