@@ -362,6 +362,7 @@ class Assembly {
     } else if (keys_.has("noise.baseline_ms")) {
       keys_.problem(keys_.find("noise.baseline_ms"), "'noise.baseline_ms' needs two numbers.");
     }
+    out_.noise.whole_epoch = !keys_.has("noise.baseline_ms");
     if (const auto* shrinkage = keys_.find("noise.shrinkage"); shrinkage && shrinkage->is_number())
       out_.noise.shrinkage = shrinkage->number();
   }

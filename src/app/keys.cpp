@@ -535,7 +535,9 @@ std::vector<KeyRecord> make_records() {
        1e5,
        {},
        "",
-       "First and last latency of the baseline; default: all samples before 0."},
+       "First and last latency of the samples that the noise is taken from; default: all before 0, "
+       "of "
+       "trials the whole epoch (after baseline correction the noise of later samples is larger)."},
       {"noise.after_ms",
        T::number,
        "ms",

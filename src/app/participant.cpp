@@ -79,22 +79,32 @@ void load_averages(const Experiment& experiment, const TrialCounts& counts, Part
     data.contrasts.push_back(form_contrast(plan.name, plan.weights, data.averages, data.noise));
 }
 
-/// Does the noise fit the averages' baseline? Where there is one.
+}  // namespace
+
+void note_whiteness(ParticipantData& data) {
+  if (data.whiteness.white) return;
+  data.notes.push_back(fmt::format(
+      "the whitened baseline of the averages has mean square {:.2f}, expected {:.2f} to {:.2f}: {}",
+      data.whiteness.mean_square, data.whiteness.low, data.whiteness.high,
+      data.whiteness.mean_square > 1
+          ? "their noise is larger than the covariance says (locked to the events, or trials that "
+            "are not independent)"
+          : "their noise is smaller than the covariance says"));
+}
+
+namespace {
+
+/// Does the noise fit the averages' baseline? Where there is one. (Trials have been checked.)
 void check_noise(const Experiment& experiment, ParticipantData& data) {
+  if (data.trials) return;
   std::pair<double, double> baseline{experiment.noise.baseline_from_s,
                                      experiment.noise.baseline_to_s};
-  if (baseline.first >= baseline.second)
-    baseline = experiment.trials.options.baseline_s.value_or(std::pair{-1e9, -1e-9});
+  if (baseline.first >= baseline.second) baseline = {-1e9, -1e-9};
   const auto& times = data.averages[0].times_s;
   const auto inside = (times.array() >= baseline.first && times.array() <= baseline.second).count();
   if (inside < 5) return;
   data.whiteness = check_whiteness(data.averages, data.noise, baseline.first, baseline.second);
-  if (!data.whiteness.white)
-    data.notes.push_back(fmt::format(
-        "the whitened baseline has mean square {:.2f}, expected {:.2f} to {:.2f}: the noise "
-        "covariance is too {} for these averages",
-        data.whiteness.mean_square, data.whiteness.low, data.whiteness.high,
-        data.whiteness.mean_square > 1 ? "small" : "large"));
+  note_whiteness(data);
 }
 
 }  // namespace

@@ -127,6 +127,27 @@ std::string few_trials(const std::vector<Average>& averages) {
                            join_labels(few));
 }
 
+/// Is the baseline of the averages what single trials let expect? By the baseline's own covariance;
+/// that in use may be of the whole epoch, and says how much larger it is.
+void check_baseline(const Experiment& experiment, const Trials& trials, ParticipantData& data) {
+  constexpr Eigen::Index kFewestSamples = 5;
+  if (!trials.baseline_removed ||
+      samples_in(trials.times_s,
+                 {"baseline", trials.baseline_s.first, trials.baseline_s.second, {}})
+              .count < kFewestSamples)
+    return;
+  NoiseOptions options;
+  options.shrinkage = experiment.noise.shrinkage;
+  options.oas = experiment.noise.oas;
+  const NoiseCovariance baseline = estimate_trial_noise(trials, options);
+  data.whiteness =
+      check_whiteness(data.averages, baseline, trials.baseline_s.first, trials.baseline_s.second);
+  note_whiteness(data);
+  data.noise.source +=
+      fmt::format("; {:.2f} times the variance of the baseline",
+                  data.noise.single_trial_V2.trace() / baseline.single_trial_V2.trace());
+}
+
 Labels fixed_leads(const std::map<std::string, Labels>& by_participant, const std::string& name) {
   const auto found = by_participant.find(name);
   return found != by_participant.end() ? found->second : Labels{};
@@ -162,6 +183,7 @@ void load_trials(const Experiment& experiment, ParticipantData& data) {
           ? read_noise_table(experiment.noise.table, trials.channels, experiment.noise.shrinkage)
       : experiment.noise.from == From::trials ? estimate_trial_noise(trials, experiment.noise)
                                               : estimate_noise(data.averages, experiment.noise);
+  check_baseline(experiment, trials, data);
   data.trials.emplace();
   data.trials->records = trials.records;
   if (experiment.lcmv_from_trials)

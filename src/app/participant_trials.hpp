@@ -9,4 +9,7 @@ namespace headwater {
 /// Fills all of `data` but the forward model; data.name and data.cap are there.
 void load_trials(const Experiment& experiment, ParticipantData& data);
 
+/// Adds a note where the whiteness check failed.
+void note_whiteness(ParticipantData& data);
+
 }  // namespace headwater

@@ -161,24 +161,26 @@ LocateReport locate(const Experiment& experiment, const InspectReport& read,
 }
 
 OutputTable inspect_table(const InspectReport& report) {
-  OutputTable table{"What was read of each participant.",
-                    {{"participant_id", "Participant", ""},
-                     {"channels", "Channels after edits, restored reference included", ""},
-                     {"bad_leads", "Leads taken for bad (of averages: that look bad)", ""},
-                     {"samples", "Samples of an average", ""},
-                     {"from_ms", "First latency", "ms"},
-                     {"to_ms", "Last latency", "ms"},
-                     {"trials", "Fewest and most single trials of a condition", ""},
-                     {"rejected", "Events of the conditions that gave no trial", ""},
-                     {"noise_rank", "Rank of the noise covariance before shrinkage", ""},
-                     {"noise_condition", "Condition number after shrinkage", ""},
-                     {"shrinkage", "Weight of the scaled identity", ""},
-                     {"noise_uV", "Root mean square noise of a single trial", "uV"},
-                     {"white", "Mean square of the averages' whitened baseline: about 1", ""},
-                     {"sphere_mm", "Radius of the sphere through the positions", "mm"},
-                     {"sphere_rms_mm", "Root mean square distance from it", "mm"},
-                     {"sphere_offset_mm", "Distance of its centre from the frame's origin", "mm"}},
-                    {}};
+  OutputTable table{
+      "What was read of each participant.",
+      {{"participant_id", "Participant", ""},
+       {"channels", "Channels after edits, restored reference included", ""},
+       {"bad_leads", "Leads taken for bad (of averages: that look bad)", ""},
+       {"samples", "Samples of an average", ""},
+       {"from_ms", "First latency", "ms"},
+       {"to_ms", "Last latency", "ms"},
+       {"trials", "Fewest and most single trials of a condition", ""},
+       {"rejected", "Events of the conditions that gave no trial", ""},
+       {"noise_rank", "Rank of the noise covariance before shrinkage", ""},
+       {"noise_condition", "Condition number after shrinkage", ""},
+       {"shrinkage", "Weight of the scaled identity", ""},
+       {"noise_uV", "Root mean square noise of a single trial", "uV"},
+       {"white",
+        "Mean square of the averages' whitened baseline: about 1, less where much is shrunk", ""},
+       {"sphere_mm", "Radius of the sphere through the positions", "mm"},
+       {"sphere_rms_mm", "Root mean square distance from it", "mm"},
+       {"sphere_offset_mm", "Distance of its centre from the frame's origin", "mm"}},
+      {}};
   for (const auto& participant : report.participants) {
     double fewest = participant.averages[0].trials, most = fewest;
     for (const auto& average : participant.averages) {

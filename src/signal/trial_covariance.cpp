@@ -37,7 +37,8 @@ struct Window {
 
 Window noise_window(const Trials& trials, const NoiseOptions& options) {
   const bool own = options.baseline_from_s == options.baseline_to_s;
-  if (own && !trials.baseline_removed) return {{0, trials.times_s.size()}, false, "all samples"};
+  if (options.whole_epoch || (own && !trials.baseline_removed))
+    return {{0, trials.times_s.size()}, false, "all samples"};
   const auto [from, to] =
       own ? trials.baseline_s : std::pair(options.baseline_from_s, options.baseline_to_s);
   Window window;

@@ -100,6 +100,24 @@ TEST_F(CommandRecordings, TheBadLeadAndEveryDecisionIsListed) {
   EXPECT_TRUE(rows_with(good, {{"bad", "yes"}}).empty());
 }
 
+// The noise that the sources' maps are judged by is that of the windows: the planted background,
+// the sensors' 2 uV, and what subtracting a baseline of 100 ms adds - not that of the baseline
+// itself, which is a fifth smaller.
+TEST_F(CommandRecordings, TheNoiseIsThatOfTheWindows) {
+  const ProgramRun done = run({"inspect", "recordings.toml", "--json"});
+  ASSERT_EQ(done.exit_code, 0) << done.err;
+  const Table truth = read_table(folder() / "truth_heads.tsv", "truth");
+  const Json json = parse_json(done.out, "inspect");
+  for (const auto& person : json.find("participants")->items()) {
+    const std::string who = person.find("participant_id")->text();
+    const double planted =
+        std::hypot(number_at(truth, "background_uV", {{"participant_id", who}}), 2);
+    const double found = std::stod(person.find("noise_uV")->text());
+    EXPECT_GT(found, planted) << who;
+    EXPECT_LT(found, std::sqrt(2) * planted) << who;
+  }
+}
+
 TEST_F(CommandRecordings, LeadsCanBeFixedByHand) {
   const fs::path file = folder() / "fixed.toml";
   write_file(file, with(read_file(folder() / "recordings.toml", "experiment"), "[leads]",

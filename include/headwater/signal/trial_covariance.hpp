@@ -10,8 +10,11 @@
 //          samples, or no removal, gives C itself.
 //   data   about zero, all trials of all conditions, samples of the active window:
 //          Cd = sum x x' / (T sum_k n_k)    - the power a beamformer has to pass or to stop
-// Shrinkage as in noise_covariance.hpp; or OAS (Chen et al. 2010 IEEE TSP 58:5016, eq. 23), with n
-// replaced by the number of independent samples:
+// Which samples: where each trial's mean over a short baseline is subtracted, slow noise is small
+// in the baseline and grows after it, to twice the variance where the two are independent. The
+// noise of a later window is that of the whole epoch; that of the baseline understates it, and with
+// it flatters every signal-to-noise ratio. Shrinkage as in noise_covariance.hpp; or OAS (Chen et
+// al. 2010 IEEE TSP 58:5016, eq. 23), with n replaced by the number of independent samples:
 //   rho = min(1, ((1 - 2/p) tr(S^2) + tr(S)^2) / ((n + 1 - 2/p) (tr(S^2) - tr(S)^2/p)))
 #pragma once
 #include <headwater/signal/noise_covariance.hpp>
