@@ -268,7 +268,7 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
   std::string note;
   std::string others;
   for (std::size_t k = 1; k < sets.size() && k < 6; ++k)
-    others += fmt::format("#   {} ({})\n", start + sets[k].pattern, sets[k].of_participant.size());
+    others += fmt::format("  {} ({})\n", start + sets[k].pattern, sets[k].of_participant.size());
   begun.text = fmt::format(
       "# Written by `headwater begin` from what the folder holds. Read it through, change what is\n"
       "# not meant so, then: headwater inspect {0}\n# `headwater keys` explains every key. Paths "
@@ -276,6 +276,8 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
       "relative to this file.\n\ntitle = {1}\noutput = \"results\"\n\n",
       file.filename().string(), in_quotes(title));
   begun.text += participants_section(root, start, set, note);
+  if (!others.empty())
+    note += "Other recordings, not used (choose by trials.recording):\n" + others;
   if (!others.empty()) begun.text += "# Other recordings in the folder:\n" + others;
   begun.text += trials_section(recording, start + set.pattern);
   begun.text += montage_section(recording, start, edf, root, note);
@@ -287,10 +289,10 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
     note += fmt::format("Without events: {}.\n",
                         join_labels({events.lacking.begin(), events.lacking.end()}));
   for (const auto& remark : recording.notes()) note += remark + "\n";
-  begun.summary =
-      fmt::format("{} participants with {}; {} channels at {:g} Hz; {} trial types.\n{}",
-                  set.of_participant.size(), set.pattern, recording.used_names().size(),
-                  recording.sampling_Hz(), events.types.size(), note);
+  begun.summary = fmt::format(
+      "{} participant{} with {}; {} channels at {:g} Hz; {} trial types.\n{}",
+      set.of_participant.size(), set.of_participant.size() == 1 ? "" : "s", set.pattern,
+      recording.used_names().size(), recording.sampling_Hz(), events.types.size(), note);
   return begun;
 }
 

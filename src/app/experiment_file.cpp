@@ -38,6 +38,7 @@ class Assembly {
     read_conditions();
     read_trial_keys(keys_, out_, folder_);
     read_participants();
+    check_lead_lists();
     read_contrasts();
     read_windows();
     read_montage();
@@ -164,6 +165,18 @@ class Assembly {
       }
     }
     out_.participants.assign(found.begin(), found.end());
+  }
+
+  /// Leads are fixed for people who are there.
+  void check_lead_lists() {
+    for (const auto& [key, lists] : {std::pair{"leads.bad", &out_.trials.bad_leads},
+                                     std::pair{"leads.good", &out_.trials.good_leads}})
+      for (const auto& [name, leads] : *lists)
+        if (!find_label(out_.participants, name) &&
+            !find_label(keys_.texts("participants.leave_out"), name))
+          keys_.problem(keys_.find(key),
+                        fmt::format("'{}' names participant '{}', who is not there.{}", key, name,
+                                    did_you_mean(name, out_.participants)));
   }
 
   void read_contrasts() {

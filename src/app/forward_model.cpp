@@ -47,11 +47,13 @@ SphereFit centred_sphere(const Montage& table, const std::string& path) {
 
 /// What makes a cap unusable or doubtful, said in words.
 void judge_fit(ParticipantCap& cap, const CapFit& fit) {
-  if (fit.mirrored || fit.reversed)
-    throw InputError(fmt::format(
-        "{}: {} seem exchanged: the positions fit the standard cap far better that way. Expected "
-        "RAS axes (x to the right, y forwards). Mend the table, or the labels of its electrodes.",
-        cap.source, fit.mirrored ? "left and right" : "nasion and inion"));
+  if (fit.mirrored || fit.reversed) {
+    std::string message = fmt::format("{}: the cap contradicts itself.", cap.source);
+    for (const auto& note : fit.notes) message += " " + note + ".";
+    throw InputError(message +
+                     " Mend the table, its labels, or what its coordinate system says of axes and "
+                     "landmarks.");
+  }
   for (const auto& outlier : fit.outliers)
     cap.notes.push_back(fmt::format(
         "electrode {} lies {:.0f} degrees from where its name belongs and {:.0f} mm off the sphere",

@@ -86,7 +86,7 @@ void note_whiteness(ParticipantData& data) {
   data.notes.push_back(fmt::format(
       "the whitened baseline of the averages has mean square {:.2f}, expected {:.2f} to {:.2f}: {}",
       data.whiteness.mean_square, data.whiteness.low, data.whiteness.high,
-      data.whiteness.mean_square > 1
+      data.whiteness.mean_square > data.whiteness.high
           ? "their noise is larger than the covariance says (locked to the events, or trials that "
             "are not independent)"
           : "their noise is smaller than the covariance says"));
@@ -114,6 +114,7 @@ ParticipantData load_participant(const Experiment& experiment, const std::string
   ParticipantData data;
   data.name = participant;
   data.cap = read_participant_cap(experiment, participant);
+  if (experiment.positions != "standard") data.inputs.push_back(data.cap.source);
   if (experiment.has_trials())
     load_trials(experiment, data);
   else

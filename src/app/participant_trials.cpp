@@ -37,6 +37,7 @@ void regress_trials(const TrialPlan& plan, const Recording& recording, const Tri
   for (const auto& name : plan.predictors)
     regressors.push_back(regressor_of(name, recording.events(), observer));
   summary.regression = regress(trials, regressors, plan.regression, plan.blocks);
+  summary.predictors = std::move(regressors);
 }
 
 /// For each condition the places of its trials, block by block: consecutive, nearly equal.
@@ -113,6 +114,33 @@ void form_contrasts(const Experiment& experiment, const Trials& trials, Particip
   }
 }
 
+/// Leads that the recording sets aside for another reason than their type.
+std::string not_used(const Recording& recording) {
+  Labels aside;
+  for (const auto& channel : recording.channels())
+    if (!channel.set_aside.empty() && !channel.set_aside.starts_with("type"))
+      aside.push_back(fmt::format("{} ({})", channel.name, channel.set_aside));
+  return aside.empty() ? "" : fmt::format("not used: {}", join_labels(aside));
+}
+
+/// The lead to which more than half of the rejected trials are owed, where they are many.
+std::string costly_lead(const Trials& trials) {
+  std::map<std::string, int> cost;
+  int rejected = 0;
+  for (const auto& record : trials.records)
+    if (!record.channel.empty()) {
+      ++rejected;
+      ++cost[record.channel];
+    }
+  for (const auto& [lead, trials_lost] : cost)
+    if (20 * rejected >= static_cast<int>(trials.records.size()) && 2 * trials_lost > rejected)
+      return fmt::format(
+          "lead {} alone is why {} of {} rejected trials went: leads.bad would keep "
+          "them without it",
+          lead, trials_lost, rejected);
+  return "";
+}
+
 /// Conditions with so few trials that the average is mostly noise.
 std::string few_trials(const std::vector<Average>& averages) {
   constexpr double kFew = 10;
@@ -140,12 +168,14 @@ void check_baseline(const Experiment& experiment, const Trials& trials, Particip
   options.shrinkage = experiment.noise.shrinkage;
   options.oas = experiment.noise.oas;
   const NoiseCovariance baseline = estimate_trial_noise(trials, options);
-  data.whiteness =
-      check_whiteness(data.averages, baseline, trials.baseline_s.first, trials.baseline_s.second);
+  const bool of_trials = experiment.noise.from == NoiseOptions::From::trials;
+  data.whiteness = check_whiteness(data.averages, of_trials ? baseline : data.noise,
+                                   trials.baseline_s.first, trials.baseline_s.second);
   note_whiteness(data);
-  data.noise.source +=
-      fmt::format("; {:.2f} times the variance of the baseline",
-                  data.noise.single_trial_V2.trace() / baseline.single_trial_V2.trace());
+  if (of_trials)
+    data.noise.source +=
+        fmt::format("; {:.2f} times the variance of the baseline",
+                    data.noise.single_trial_V2.trace() / baseline.single_trial_V2.trace());
 }
 
 Labels fixed_leads(const std::map<std::string, Labels>& by_participant, const std::string& name) {
@@ -167,11 +197,16 @@ void load_trials(const Experiment& experiment, ParticipantData& data) {
       cut_trials(recording, experiment.edits, plan.choices, options,
                  [&](const Labels& labels) { return montage_of(experiment, data.cap, labels); });
   data.notes = recording.notes();
+  if (const auto note = not_used(recording); !note.empty()) data.notes.push_back(note);
   data.notes.insert(data.notes.end(), trials.notes.begin(), trials.notes.end());
   data.leads = trials.leads;
   for (std::size_t c = 0; c < experiment.conditions.size(); ++c)
     data.averages.push_back(average_trials(trials, c, plan.trim));
-  for (const auto& warning : {count_warning(data.averages), few_trials(data.averages)})
+  // Trimming lead by lead has a noise of its own, which the winsorised trials show.
+  const Trials clipped = plan.trim > 0 ? winsorised(trials, plan.trim) : Trials{};
+  const Trials& noisy = plan.trim > 0 ? clipped : trials;
+  for (const auto& warning :
+       {count_warning(data.averages), few_trials(data.averages), costly_lead(trials)})
     if (!warning.empty()) data.notes.push_back(warning);
   for (const auto& contrast : experiment.contrasts)
     for (const auto& window : windows_of(experiment, contrast.name))
@@ -181,9 +216,9 @@ void load_trials(const Experiment& experiment, ParticipantData& data) {
   data.noise =
       experiment.noise.from == From::table
           ? read_noise_table(experiment.noise.table, trials.channels, experiment.noise.shrinkage)
-      : experiment.noise.from == From::trials ? estimate_trial_noise(trials, experiment.noise)
+      : experiment.noise.from == From::trials ? estimate_trial_noise(noisy, experiment.noise)
                                               : estimate_noise(data.averages, experiment.noise);
-  check_baseline(experiment, trials, data);
+  check_baseline(experiment, noisy, data);
   data.trials.emplace();
   data.trials->records = trials.records;
   if (experiment.lcmv_from_trials)

@@ -39,12 +39,18 @@ OutputTable trial_table(const ParticipantData& participant) {
                      {"lead", "Lead that broke the limit most", ""},
                      {"figure_uV", "Its value", "uV"}},
                     {}};
-  for (const auto& record : participant.trials->records)
+  for (const auto& predictor : participant.trials->predictors)
+    table.columns.push_back({predictor.name, "Predictor, as it is before centring", ""});
+  for (const auto& record : participant.trials->records) {
     table.rows.push_back(
         {std::to_string(record.event_row + 1), format_number(record.onset_s, 9), record.condition,
          record.kept ? "yes" : "no", record.reason.empty() ? "n/a" : record.reason,
          record.channel.empty() ? "n/a" : record.channel,
          record.channel.empty() ? "n/a" : format_fixed(record.figure / kMicrovolt, 1)});
+    for (const auto& predictor : participant.trials->predictors)
+      table.rows.back().push_back(
+          format_number(predictor.of_event[static_cast<Eigen::Index>(record.event_row)], 9));
+  }
   return table;
 }
 

@@ -83,6 +83,9 @@ std::string pair_note(const ForwardModel& forward, const DipoleVerdict& verdict)
       "one mirrored pair leaves {} % of the window's mean map unexplained, the best single point "
       "{} %",
       percent(verdict.pair.unexplained), percent(verdict.one.unexplained));
+  note += fmt::format("; moments {:.1f} nA m left, {:.1f} right",
+                      verdict.pair.partner_moment_Am.norm() / kNanoampereMetre,
+                      verdict.pair.moment_Am.norm() / kNanoampereMetre);
   if (!may_be_merged(forward.grid, verdict.pair.point)) return note;
   return note + "; it lies deep and may itself stand for extended or further sources";
 }

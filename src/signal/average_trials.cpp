@@ -1,7 +1,5 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
-#include <headwater/base/distributions.hpp>
 #include <headwater/base/error.hpp>
-#include <headwater/base/units.hpp>
 #include <headwater/signal/trials.hpp>
 
 #include <fmt/core.h>
@@ -17,12 +15,24 @@ using Index = Eigen::Index;
 
 constexpr double kUnequalCounts = 1.5;
 
-/// Variance of the plain mean over that of the trimmed one, for normal noise.
-double efficiency(double share) {
-  const double z = -normal_quantile(share);
-  const double density = std::exp(-z * z / 2) / std::sqrt(2 * kPi);
-  const double left = 1 - 2 * share;
-  return left * left / (left - 2 * z * density + 2 * share * z * z);
+/// Trials that a share cuts off at each end. The addend keeps 0.1 * 10 from being 0 for rounding.
+std::ptrdiff_t cut_of(double trim, std::size_t count) {
+  return static_cast<std::ptrdiff_t>(trim * static_cast<double>(count) + 1e-9);
+}
+
+void check_trim(double trim) {
+  if (!(trim >= 0 && trim < 0.5))
+    throw ExperimentError(
+        fmt::format("A share of {} of the trials cannot be trimmed at each end: expected 0 to "
+                    "below 0.5.",
+                    trim));
+}
+
+std::vector<Index> members_of(const Trials& trials, std::size_t condition) {
+  std::vector<Index> members;
+  for (Index k = 0; k < trials.count(); ++k)
+    if (trials.condition[static_cast<std::size_t>(k)] == condition) members.push_back(k);
+  return members;
 }
 
 /// Mean of what is left without the `cut` smallest and largest. Reorders.
@@ -40,23 +50,16 @@ double trimmed_mean(std::vector<double>& values, std::ptrdiff_t cut) {
 }  // namespace
 
 Average average_trials(const Trials& trials, std::size_t condition, double trim) {
-  if (!(trim >= 0 && trim < 0.5))
-    throw ExperimentError(
-        fmt::format("A share of {} of the trials cannot be trimmed at each end: expected 0 to "
-                    "below 0.5.",
-                    trim));
+  check_trim(trim);
   const Index count = trials.count_of(condition), samples = trials.times_s.size();
   if (count == 0) throw std::logic_error("average_trials: a condition without trials");
-  // The addend keeps 0.1 * 10 from being 0 for rounding.
-  const auto cut = static_cast<std::ptrdiff_t>(trim * static_cast<double>(count) + 1e-9);
+  const auto cut = cut_of(trim, static_cast<std::size_t>(count));
   Average average;
   average.condition = trials.conditions.at(condition);
   average.channels = trials.channels;
   average.times_s = trials.times_s;
   average.trials = static_cast<double>(count);
-  std::vector<Index> members;
-  for (Index k = 0; k < trials.count(); ++k)
-    if (trials.condition[static_cast<std::size_t>(k)] == condition) members.push_back(k);
+  const std::vector<Index> members = members_of(trials, condition);
   average.data_V = Eigen::MatrixXd::Zero(trials.data_V.rows(), samples);
   if (cut == 0) {
     for (const Index k : members) average.data_V += trials.trial(k);
@@ -70,8 +73,36 @@ Average average_trials(const Trials& trials, std::size_t condition, double trim)
         values[i] = trials.data_V(m, members[i] * samples + t);
       average.data_V(m, t) = trimmed_mean(values, cut);
     }
-  average.trials *= efficiency(static_cast<double>(cut) / average.trials);
   return average;
+}
+
+Trials winsorised(const Trials& trials, double trim) {
+  check_trim(trim);
+  Trials result = trials;
+  const Index samples = trials.times_s.size();
+  for (std::size_t condition = 0; condition < trials.conditions.size(); ++condition) {
+    const std::vector<Index> members = members_of(trials, condition);
+    const auto cut = cut_of(trim, members.size());
+    if (cut == 0) continue;
+    const auto count = static_cast<double>(members.size());
+    const double stretch = 1 / (1 - 2 * static_cast<double>(cut) / count);
+    std::vector<double> values(members.size());
+    for (Index t = 0; t < samples; ++t)
+      for (Index m = 0; m < trials.data_V.rows(); ++m) {
+        for (std::size_t i = 0; i < members.size(); ++i)
+          values[i] = trials.data_V(m, members[i] * samples + t);
+        std::sort(values.begin(), values.end());
+        const double low = values[static_cast<std::size_t>(cut)];
+        const double high = values[values.size() - 1 - static_cast<std::size_t>(cut)];
+        double mean = 0;
+        for (const double value : values) mean += std::clamp(value, low, high) / count;
+        for (const Index k : members) {
+          double& value = result.data_V(m, k * samples + t);
+          value = mean + stretch * (std::clamp(value, low, high) - mean);
+        }
+      }
+  }
+  return result;
 }
 
 std::string count_warning(const std::vector<Average>& averages) {

@@ -112,6 +112,15 @@ std::vector<ChosenEvent> choose_events(const Table& events, const std::vector<Ev
   if (!problems.empty()) throw InputError(problem_list(events.source, problems));
   std::stable_sort(chosen.begin(), chosen.end(),
                    [](const auto& a, const auto& b) { return a.onset_s < b.onset_s; });
+  const auto twice = std::adjacent_find(
+      chosen.begin(), chosen.end(),
+      [](const auto& a, const auto& b) { return a.onset_s == b.onset_s && a.place == b.place; });
+  if (twice != chosen.end())
+    throw InputError(fmt::format(
+        "{}: two events of condition '{}' begin at {:g} s (lines {} and {}): a trial would count "
+        "twice. Remove one of each such pair.",
+        events.source, choices[twice->place].condition, twice->onset_s, events.lines[twice->row],
+        events.lines[(twice + 1)->row]));
   return chosen;
 }
 

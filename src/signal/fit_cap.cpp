@@ -102,7 +102,7 @@ void tell_exchange(const Eigen::Matrix3d& q, const std::optional<Marks>& marks, 
     const Eigen::Vector3d front = q * marks->front, right = q * marks->right;
     const double azimuth = std::atan2(std::abs(front.x()), front.y()) * 180 / kPi;
     fit.reversed = azimuth > kReversedDeg;
-    crossed = right.x() < 0;
+    crossed = std::atan2(std::abs(right.y()), right.x()) * 180 / kPi > kReversedDeg;
   }
   fit.mirrored = fit.reversed ? improper && crossed : improper || crossed;
 }
@@ -141,8 +141,9 @@ Eigen::Vector3d rotate_by_names(const Named& named, const std::optional<Marks>& 
   if (!landmarks) return mirror;
   fit.landmark_angle_deg = angle_between_deg(fit.rotation, landmarks->rotation);
   if (fit.landmark_angle_deg > kDisagreeDeg)
-    fit.notes.push_back(fmt::format("names and landmarks disagree by a rotation of {:.0f} degrees",
-                                    fit.landmark_angle_deg));
+    fit.notes.push_back(fmt::format(
+        "names and landmarks disagree by a rotation of {:.0f} degrees: the names are used",
+        fit.landmark_angle_deg));
   return mirror;
 }
 

@@ -112,14 +112,18 @@ void check_left(const std::vector<TrialRecord>& records, const Labels& condition
     for (const TrialRecord& record : records) {
       if (record.condition != condition) continue;
       left |= record.kept;
-      if (!record.kept) ++reasons[record.reason];
+      if (record.kept) continue;
+      ++reasons[record.channel.empty() ? record.reason
+                                       : fmt::format("{} at {}", record.reason, record.channel)];
     }
     if (left) continue;
     Labels why;
     for (const auto& [reason, count] : reasons)
       why.push_back(fmt::format("{} x {}", count, reason));
     problems.push_back(
-        fmt::format("condition '{}' has no trial left: {}.", condition, join_labels(why)));
+        fmt::format("condition '{}' has no trial left: {}. Compare trials.reject_uV, a high-pass "
+                    "(trials.high_pass_Hz), leads.bad.",
+                    condition, join_labels(why)));
   }
   if (!problems.empty()) throw InputError(problem_list(where, problems));
 }
@@ -172,6 +176,19 @@ void take(const Eigen::MatrixXd& data, const Montage& montage, const Indices& go
       trials.channels.push_back(montage.labels[static_cast<std::size_t>(lead)]);
 }
 
+/// Refuses epochs that would not fit a common machine, before anything is read.
+void check_size(std::size_t leads, Index samples, std::size_t epochs, const std::string& where) {
+  constexpr double kMostBytes = 8e9;     // twice the epochs are held
+  constexpr Index kMostSamples = 20000;  // noise compares samples by samples
+  const double bytes = 16.0 * static_cast<double>(leads) * static_cast<double>(samples) *
+                       static_cast<double>(epochs);
+  if (bytes <= kMostBytes && samples <= kMostSamples) return;
+  throw InputError(fmt::format(
+      "{}: {} epochs of {} samples at {} leads need {:.0f} GB; at most {:.0f} GB and {} samples in "
+      "an epoch are worked on. Shorten the epochs (trials.from_ms, trials.to_ms), or decimate.",
+      where, epochs, samples, leads, std::ceil(bytes / 1e9), kMostBytes / 1e9, kMostSamples));
+}
+
 void split_leads(const LeadCheck& check, const std::string& where, Indices& good, Indices& bad) {
   for (std::size_t i = 0; i < check.leads.size(); ++i)
     (check.leads[i].bad ? bad : good).push_back(static_cast<Index>(i));
@@ -213,6 +230,7 @@ Trials cut_trials(const Recording& recording, const ChannelEdits& edits,
   }
   note_places(placed, grid, recording, options, trials.notes);
 
+  check_size(plan.labels.size(), grid.kept(), placed.size(), recording.source());
   const Montage montage = montage_of(plan.labels);
   const Eigen::MatrixXd data = read_epochs(recording, plan.source, grid, placed, options);
   std::vector<bool> restored;

@@ -27,6 +27,7 @@ struct PartLeftOut {
 struct TrialsSummary {
   std::vector<TrialRecord> records;  ///< every chosen event
   RegressionResult regression;       ///< names empty: none
+  std::vector<Regressor> predictors;  ///< of every event, in the order of regression.names
   NormalBelief prior;                ///< of the ideal observer, where there is one
 };
 

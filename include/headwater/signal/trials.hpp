@@ -100,11 +100,16 @@ Trials cut_trials(const Recording& recording, const ChannelEdits& edits,
                   const MontageOf& montage_of);
 
 /// Average of a condition. trim 0: the mean. Else at each channel and sample the share `trim` of
-/// trials is left out at each end (Stuart & Ord: trimmed mean), and `trials` is the count times the
-/// efficiency of that mean for normal noise,
-///   1/efficiency = [ (1-2g) - 2 z phi(z) + 2 g z^2 ] / (1-2g)^2,  z = the 1-g quantile.
-/// floor(g n) trials are left out at each end; g in the formula is that number over n.
+/// trials is left out at each end (trimmed mean); floor(trim n) trials at each end. `trials` is the
+/// count; the noise that goes with it is that of winsorised().
 Average average_trials(const Trials& trials, std::size_t condition, double trim);
+
+/// Trials whose plain noise is that of the trimmed mean: at each channel and sample, with g =
+/// floor(trim n)/n of a condition, values beyond the g and 1-g order statistics are set to these, and
+/// the distances from the condition's mean of what results are divided by 1-2g. The variance of their
+/// mean is that of the trimmed mean (Tukey & McLaughlin 1963 Sankhya A 25:331), covariances between
+/// channels included, which a factor of efficiency would miss.
+Trials winsorised(const Trials& trials, double trim);
 
 /// Share of one condition's trials beyond which a peak of its average is biased against another's:
 /// a warning when the largest and smallest counts differ by more than a factor 1.5 (the maximum of

@@ -24,7 +24,7 @@ void print_notes(const InspectReport& report) {
       auto found = std::find_if(notes.begin(), notes.end(),
                                 [&](const auto& entry) { return entry.first == general; });
       if (found == notes.end()) found = notes.insert(found, {general, {}});
-      found->second.push_back(participant.name);
+      if (!find_label(found->second, participant.name)) found->second.push_back(participant.name);
     }
   if (!notes.empty()) fmt::print("\nTo know:\n");
   for (const auto& [note, people] : notes)

@@ -17,8 +17,8 @@ std::string place_text(const SummaryRow& row) {
 }
 
 /// One contrast and window of one participant: the pair once, then each method's peak and regions.
-void print_window(const std::vector<const SummaryRow*>& rows) {
-  fmt::print("\n{}, {} ({})\n", rows[0]->contrast, rows[0]->window, rows[0]->participant);
+void print_window(const std::vector<const SummaryRow*>& rows, const std::string& whom) {
+  fmt::print("\n{}, {} ({})\n", rows[0]->contrast, rows[0]->window, whom);
   bool pair_printed = false;
   for (const auto* row : rows) {
     if (row->kind == "mirrored pair") {
@@ -35,7 +35,11 @@ void print_window(const std::vector<const SummaryRow*>& rows) {
 }
 
 /// What the last participant (the mean where there is one) says, window by window.
-void print_summary(const std::vector<SummaryRow>& rows) {
+void print_summary(const std::vector<SummaryRow>& rows, std::size_t read, std::size_t failed) {
+  const std::string& last = rows.back().participant;
+  const std::string whom = last != kMeanName ? last
+                           : failed == 0     ? "mean"
+                                             : fmt::format("mean of {} of {}", read, read + failed);
   std::vector<std::pair<std::string, std::vector<const SummaryRow*>>> windows;
   for (const auto& row : rows) {
     if (row.participant != rows.back().participant) continue;
@@ -47,7 +51,7 @@ void print_summary(const std::vector<SummaryRow>& rows) {
     else
       windows.push_back({key, {&row}});
   }
-  for (const auto& [key, members] : windows) print_window(members);
+  for (const auto& [key, members] : windows) print_window(members, whom);
 }
 
 }  // namespace
@@ -84,7 +88,7 @@ int locate_and_print(const ExperimentOptions& options, bool show_inspection) {
         .set("failures", failures);
     fmt::print("{}\n", json.dump());
   } else if (talk && !report.rows.empty()) {
-    print_summary(report.rows);
+    print_summary(report.rows, read.participants.size(), read.failures.size());
     fmt::print("\nAll participants: {}\n", (experiment.output / "summary.tsv").string());
   }
   return report_failures(report.failures, !report.rows.empty());
