@@ -56,6 +56,12 @@ inline std::filesystem::path open_data() {
   return folder ? folder : HEADWATER_OPEN_DATA_DEFAULT;
 }
 
+/// Names the folder of a set of open recordings, or skips the test where it is absent.
+#define NEED_OPEN_DATA(variable, name)                                                    \
+  const std::filesystem::path variable = std::filesystem::absolute(open_data()) / (name); \
+  if (!std::filesystem::exists(variable))                                                 \
+  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
+
 /// Edits that make sense of the two sets of averages, see the source notes in the open-data tests.
 inline ChannelEdits novel_sounds_edits() {
   return {{"IO1", "LO1", "LO2"}, {}, {}};

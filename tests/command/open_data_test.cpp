@@ -82,11 +82,6 @@ after_ms = 600
 methods = ["sloreta"]
 )";
 
-#define NEED_OPEN_DATA(name)                                \
-  const fs::path data = fs::absolute(open_data()) / (name); \
-  if (!fs::exists(data))                                    \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 std::string filled(std::string text, const fs::path& data) {
   for (auto at = text.find('@'); at != std::string::npos; at = text.find('@', at))
     text.replace(at, 1, data.string());
@@ -117,7 +112,7 @@ Labels first_regions(const fs::path& regions, const std::string& window, std::si
 }
 
 TEST(CommandOpenData, SoundsAreHeardInBothTransverseTemporalGyri) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(data, "novel-sounds");
   const Scratch scratch;
   write_file(scratch.folder / "in" / "experiment.toml", filled(kNovelSounds, data));
   const ProgramRun run = run_program({"run", "experiment.toml", "--quiet"}, scratch.folder / "in");
@@ -163,7 +158,7 @@ TEST(CommandOpenData, SoundsAreHeardInBothTransverseTemporalGyri) {
 }
 
 TEST(CommandOpenData, PicturesAreSeenInBothOccipitalLobes) {
-  NEED_OPEN_DATA("pictures-averages");
+  NEED_OPEN_DATA(data, "pictures-averages");
   const Scratch scratch;
   write_file(scratch.folder / "in" / "experiment.toml", filled(kPictures, data));
   const ProgramRun run = run_program({"run", "experiment.toml", "--quiet"}, scratch.folder / "in");

@@ -24,11 +24,6 @@ namespace {
 
 namespace fs = std::filesystem;
 
-#define NEED_OPEN_DATA(name)                                \
-  const fs::path data = fs::absolute(open_data()) / (name); \
-  if (!fs::exists(data))                                    \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 const char* const kContrasts = R"(
 [[contrasts]]
 name = "object"
@@ -63,7 +58,7 @@ double mean_of(const NumberTable& waveform, const std::string& channel, double f
 }
 
 TEST(CommandOpenRecordings, PicturesFromTheirTrials) {
-  NEED_OPEN_DATA("pictures");
+  NEED_OPEN_DATA(data, "pictures");
   const Scratch scratch;
   const fs::path folder = scratch.folder / "in";
   fs::create_directories(folder);
@@ -142,7 +137,7 @@ void spoil(const fs::path& average, const std::string& lead) {
 }
 
 TEST(CommandOpenRecordings, OneBadLeadOfOnePersonIsNamed) {
-  NEED_OPEN_DATA("pictures-averages");
+  NEED_OPEN_DATA(data, "pictures-averages");
   const Scratch scratch;
   const fs::path folder = scratch.folder / "in";
   fs::create_directories(folder);
@@ -208,7 +203,7 @@ to_ms = 350
 // 1987 Psychophysiology 24:375): a plain beamformer cancels the two (Van Veen et al. 1997), the
 // paired one must not.
 TEST(CommandOpenRecordings, ThePairedBeamformerRecoversTheSoundResponse) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(data, "novel-sounds");
   const Scratch scratch;
   const fs::path folder = scratch.folder / "in";
   std::string text = kSounds;

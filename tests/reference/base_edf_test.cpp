@@ -21,11 +21,6 @@ namespace {
 constexpr double kEps = std::numeric_limits<double>::epsilon();
 constexpr double kNone = std::numeric_limits<double>::quiet_NaN();
 
-#define NEED_OPEN_DATA(name)                                 \
-  const std::filesystem::path folder = open_data() / (name); \
-  if (!std::filesystem::exists(folder))                      \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 std::vector<double> all_samples(const EdfFile& edf, std::size_t signal) {
   const auto count = edf.signals()[signal].samples_per_record * edf.records();
   std::vector<double> values(static_cast<std::size_t>(count));
@@ -106,12 +101,12 @@ TEST(BaseEdf, AgreesWithEdflibOnUnequalRangesAndRates) {
 }
 
 TEST(BaseEdf, AgreesWithEdflibOnRecordingsOfPictures) {
-  NEED_OPEN_DATA("pictures");
+  NEED_OPEN_DATA(folder, "pictures");
   expect_as_edflib(folder / "sub-c337/eeg/sub-c337_task-pictures_eeg.edf");
 }
 
 TEST(BaseEdf, AgreesWithEdflibOnFists) {
-  NEED_OPEN_DATA("fists");
+  NEED_OPEN_DATA(folder, "fists");
   // EDFlib wants the prefilter text of the annotation signal, the last of 65, blank.
   std::string bytes = read_file(folder / "S001R03.edf", "recording");
   const std::size_t at = 256 + 65 * (16 + 80 + 5 * 8) + 64 * 80;
@@ -188,19 +183,19 @@ void expect_as_read_plainly(const std::filesystem::path& path) {
 }
 
 TEST(BaseEdf, AgreesWithAPlainReaderOnPictures) {
-  NEED_OPEN_DATA("pictures");
+  NEED_OPEN_DATA(folder, "pictures");
   for (const char* person : {"c337", "c342", "c372"})
     expect_as_read_plainly(folder /
                            fmt::format("sub-{0}/eeg/sub-{0}_task-pictures_eeg.edf", person));
 }
 
 TEST(BaseEdf, AgreesWithAPlainReaderOnFists) {
-  NEED_OPEN_DATA("fists");
+  NEED_OPEN_DATA(folder, "fists");
   for (const char* run : {"S001R03.edf", "S001R04.edf"}) expect_as_read_plainly(folder / run);
 }
 
 TEST(BaseEdf, FistsHaveTheAnnotationsOfTheirTable) {
-  NEED_OPEN_DATA("fists");
+  NEED_OPEN_DATA(folder, "fists");
   const EdfFile edf(folder / "S001R03.edf");
   const Table table = read_table(folder / "S001R03_events.tsv", "events");
   ASSERT_EQ(edf.annotations().size(), table.rows.size());

@@ -17,11 +17,6 @@
 namespace headwater {
 namespace {
 
-#define NEED_OPEN_DATA(name)                                 \
-  const std::filesystem::path folder = open_data() / (name); \
-  if (!std::filesystem::exists(folder))                      \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 std::vector<std::filesystem::path> cap_files(const std::filesystem::path& folder) {
   std::vector<std::filesystem::path> files;
   for (const auto& entry : std::filesystem::directory_iterator(folder))
@@ -30,7 +25,7 @@ std::vector<std::filesystem::path> cap_files(const std::filesystem::path& folder
 }
 
 TEST(SignalCapFit, RealCapsAreHeadsInTheHeadFrame) {
-  NEED_OPEN_DATA("caps");
+  NEED_OPEN_DATA(folder, "caps");
   const auto files = cap_files(folder);
   ASSERT_EQ(files.size(), 4u);
   for (const auto& file : files) {
@@ -56,7 +51,7 @@ TEST(SignalCapFit, RealCapsAreHeadsInTheHeadFrame) {
 
 // No electrode stands nearer to the place of another one of the cap than to its own.
 TEST(SignalCapFit, RealElectrodesStandNearestToTheirOwnPlace) {
-  NEED_OPEN_DATA("caps");
+  NEED_OPEN_DATA(folder, "caps");
   for (const auto& file : cap_files(folder)) {
     const Montage montage = fit_cap(read_cap(file)).montage;
     ASSERT_GE(montage.labels.size(), 60u);
@@ -76,7 +71,7 @@ TEST(SignalCapFit, RealElectrodesStandNearestToTheirOwnPlace) {
 
 // By landmarks alone the same caps come out within the same angle, and the vertex is up.
 TEST(SignalCapFit, RealCapsByLandmarks) {
-  NEED_OPEN_DATA("caps");
+  NEED_OPEN_DATA(folder, "caps");
   for (const auto& file : cap_files(folder)) {
     SCOPED_TRACE(file.filename());
     DigitisedCap cap = read_cap(file);
@@ -98,7 +93,7 @@ TEST(SignalCapFit, RealCapsByLandmarks) {
 // The template's ring lies level; that of the standard cap is pitched by 4.4 degrees, and nothing
 // else may turn it. M1, M2 and eye leads have no 10-5 name.
 TEST(SignalCapFit, ATemplateCapIsOnlyPitched) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(folder, "novel-sounds");
   const DigitisedCap cap = read_cap(folder / "electrodes.tsv");
   const CapFit fit = fit_cap(cap);
   EXPECT_EQ(fit.method, "names");

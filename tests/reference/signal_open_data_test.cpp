@@ -25,11 +25,6 @@
 namespace headwater {
 namespace {
 
-#define NEED_OPEN_DATA(name)                                 \
-  const std::filesystem::path folder = open_data() / (name); \
-  if (!std::filesystem::exists(folder))                      \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 /// One condition of every person, uV.
 std::vector<Average> everyone(const std::filesystem::path& folder, const std::string& condition,
                               const ChannelEdits& edits) {
@@ -90,7 +85,7 @@ void expect_values(const std::vector<Average>& people, int all,
 }
 
 TEST(SignalOpenData, NovelSoundsMeetThePublishedGroup) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(folder, "novel-sounds");
   const auto standard = everyone(folder, "standard", novel_sounds_edits());
   ASSERT_EQ(standard.size(), 24u);
   EXPECT_EQ(standard.front().channels.size(), 28u);
@@ -111,7 +106,7 @@ TEST(SignalOpenData, NovelSoundsMeetThePublishedGroup) {
 }
 
 TEST(SignalOpenData, PicturesMeetAnIndependentAverage) {
-  NEED_OPEN_DATA("pictures-averages");
+  NEED_OPEN_DATA(folder, "pictures-averages");
   auto object = everyone(folder, "object", pictures_edits());
   ASSERT_EQ(object.size(), 12u);
   EXPECT_EQ(object.front().channels.size(), 61u);
@@ -167,12 +162,12 @@ void expect_all_usable(const std::filesystem::path& folder, const Labels& condit
 }
 
 TEST(SignalOpenData, EveryNovelSoundsPersonIsUsable) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(folder, "novel-sounds");
   expect_all_usable(folder, {"novel", "standard"}, novel_sounds_edits(), {});
 }
 
 TEST(SignalOpenData, EveryPicturesPersonIsUsable) {
-  NEED_OPEN_DATA("pictures-averages");
+  NEED_OPEN_DATA(folder, "pictures-averages");
   expect_all_usable(folder, {"change", "repeat", "object"}, pictures_edits(),
                     {NoiseOptions::From::residual, 0, 0, 0.6, {}, {}});
   // After the edits every channel has a place.
@@ -204,19 +199,19 @@ void expect_units_told(const std::filesystem::path& folder, const Labels& condit
 }
 
 TEST(SignalOpenData, NovelSoundsInOtherUnitsAreRefused) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(folder, "novel-sounds");
   expect_units_told(folder, {"novel", "standard"}, novel_sounds_edits());
 }
 
 TEST(SignalOpenData, PicturesInOtherUnitsAreRefused) {
-  NEED_OPEN_DATA("pictures-averages");
+  NEED_OPEN_DATA(folder, "pictures-averages");
   expect_units_told(folder, {"object", "repeat", "change"}, pictures_edits());
 }
 
 // Source: notes on the recordings: radius 96 to 106 mm, rms 3 to 6 mm. All electrodes of a table
 // enter here; one cap then has 6.506 mm, a little more than the notes' last digit allows.
 TEST(SignalOpenData, DigitisedCapsAreHeads) {
-  NEED_OPEN_DATA("caps");
+  NEED_OPEN_DATA(folder, "caps");
   int caps = 0;
   for (const auto& entry : std::filesystem::directory_iterator(folder)) {
     if (!entry.path().filename().string().ends_with("electrodes.tsv")) continue;
@@ -233,7 +228,7 @@ TEST(SignalOpenData, DigitisedCapsAreHeads) {
 
 // Source: electrodes.tsv of that set: a sphere of 85 mm, two digits after the point.
 TEST(SignalOpenData, NovelSoundsPositionsAreASphere) {
-  NEED_OPEN_DATA("novel-sounds");
+  NEED_OPEN_DATA(folder, "novel-sounds");
   const Montage table = read_positions(folder / "electrodes.tsv", PositionSpace::head);
   EXPECT_EQ(table.labels.size(), 31u);
   const Eigen::ArrayXd radii = table.positions.colwise().norm().transpose().array();

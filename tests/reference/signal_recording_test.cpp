@@ -9,13 +9,8 @@
 namespace headwater {
 namespace {
 
-#define NEED_OPEN_DATA(name)                                 \
-  const std::filesystem::path folder = open_data() / (name); \
-  if (!std::filesystem::exists(folder))                      \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 TEST(SignalRecording, PicturesHaveOneSegmentForEachTrial) {
-  NEED_OPEN_DATA("pictures");
+  NEED_OPEN_DATA(folder, "pictures");
   int people = 0;
   for (const auto& person : std::filesystem::directory_iterator(folder)) {
     if (!person.is_directory()) continue;
@@ -52,7 +47,7 @@ TEST(SignalRecording, PicturesHaveOneSegmentForEachTrial) {
 // The published averages say which signal is which lead. In c337 none of the 20 trials `object` was
 // left out of them (trials.tsv).
 TEST(SignalRecording, SignalsOfPicturesAreTheLeadsOfTheAverages) {
-  NEED_OPEN_DATA("pictures");
+  NEED_OPEN_DATA(folder, "pictures");
   const Recording recording(folder / "sub-c337/eeg/sub-c337_task-pictures_eeg.edf");
   const NumberTable average =
       read_number_table(open_data() / "pictures-averages/sub-c337_object.tsv", "average");
@@ -78,7 +73,7 @@ TEST(SignalRecording, SignalsOfPicturesAreTheLeadsOfTheAverages) {
 }
 
 TEST(SignalRecording, FistsLoseTheirDots) {
-  NEED_OPEN_DATA("fists");
+  NEED_OPEN_DATA(folder, "fists");
   const Recording recording(folder / "S001R03.edf");
   EXPECT_EQ(recording.sampling_Hz(), 160);
   const Labels names = recording.used_names();

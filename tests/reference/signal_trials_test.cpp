@@ -19,11 +19,6 @@
 namespace headwater {
 namespace {
 
-#define NEED_OPEN_DATA(name)                                 \
-  const std::filesystem::path folder = open_data() / (name); \
-  if (!std::filesystem::exists(folder))                      \
-  GTEST_SKIP() << "the open recordings '" << (name) << "' are not here (HEADWATER_OPEN_DATA)"
-
 /// All trials of one person, as recorded, 0 to 996 ms.
 Trials all_trials(const std::filesystem::path& edf, const ChannelEdits& edits) {
   TrialOptions options;
@@ -70,7 +65,7 @@ std::map<std::string, double> steps_of(const std::filesystem::path& edf) {
 // The tables are rounded to 1e-4 uV (half: 5e-5 uV); the EDF files hold the source's 0.001 uV in
 // 16-bit steps of 0.001 to 0.007 uV, rounded to half a step at most, and so is their mean.
 TEST(SignalTrialsReference, PicturesAverageToThePublishedTables) {
-  NEED_OPEN_DATA("pictures-averages");
+  NEED_OPEN_DATA(folder, "pictures-averages");
   if (!std::filesystem::exists(open_data() / "pictures")) GTEST_SKIP() << "no 'pictures' here";
   const TrialCounts counts(read_table(folder / "trials.tsv", "counts"));
   ChannelEdits edits;

@@ -45,6 +45,7 @@ struct NoiseOptions {
   std::filesystem::path table;
   std::optional<double> shrinkage;  ///< 0 to 1; empty: estimated (table: 0)
   bool oas = false;                 ///< estimated by OAS (trial_covariance.hpp), else Ledoit-Wolf
+  bool whole_epoch = false;         ///< of trials: all samples, whatever the baseline
 };
 
 /// From averages of one participant (consistent channels and times). Throws InputError: no sample
