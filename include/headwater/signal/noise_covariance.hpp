@@ -40,7 +40,6 @@ struct NoiseCovariance {
 struct NoiseOptions {
   enum class From { baseline, residual, table, trials } from = From::baseline;
   double baseline_from_s = 0, baseline_to_s = 0;  ///< both ends included; equal: all samples < 0
-  bool whole_epoch = false;                       ///< of trials: all samples, whatever the baseline
   double after_s = 0;                             ///< residual: samples at or after this latency
   std::filesystem::path table;
   std::optional<double> shrinkage;  ///< 0 to 1; empty: estimated (table: 0)
