@@ -228,6 +228,10 @@ EdfHeader parse_edf_header(const std::filesystem::path& path, std::string_view f
     fields.refuse(kSignals, "no signals but annotations: there are no samples.");
   if (header.record_duration_s == 0)
     fields.refuse(kDuration, "found 0, although records hold samples; expected seconds above 0.");
+  // Rates are samples / duration: a duration next to nothing would make them infinite.
+  for (const EdfSignal& signal : header.signals)
+    if (!std::isfinite(static_cast<double>(signal.samples_per_record) / header.record_duration_s))
+      fields.refuse_found(kDuration, "seconds enough for the record's samples");
   if (header.kind != EdfFile::Kind::plain && header.annotations.empty())
     fields.refuse(
         kReserved,

@@ -17,7 +17,10 @@ constexpr double kUnequalCounts = 1.5;
 
 /// Trials that a share cuts off at each end. The addend keeps 0.1 * 10 from being 0 for rounding.
 std::ptrdiff_t cut_of(double trim, std::size_t count) {
-  return static_cast<std::ptrdiff_t>(trim * static_cast<double>(count) + 1e-9);
+  if (count == 0) return 0;
+  // Below 0.5 some value is always left, in spite of the addend.
+  return std::min(static_cast<std::ptrdiff_t>(trim * static_cast<double>(count) + 1e-9),
+                  static_cast<std::ptrdiff_t>((count - 1) / 2));
 }
 
 void check_trim(double trim) {

@@ -139,6 +139,8 @@ TEST(BaseEdfFault, NothingInIt) {
   expect_refused(with(&MadeSignal::samples, "0"), {"found '0'", "1 or more"});
   expect_refused(changed([](MadeEdf& made) { made.duration = "0"; }),
                  {"'duration of a data record': found 0"});
+  expect_refused(changed([](MadeEdf& made) { made.duration = "1e-320"; }),  // an infinite rate
+                 {"'duration of a data record': found '1e-320'"});
   MadeEdf only_annotations = made_edf_plus("EDF+C", {"+0"});
   only_annotations.signals.erase(only_annotations.signals.begin());
   only_annotations.data = {annotation_block("+0\x14\x14" + kZero, 80)};

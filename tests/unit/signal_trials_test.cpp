@@ -266,7 +266,8 @@ TEST(SignalTrialAverages, MeanAndTrimmedMean) {
   EXPECT_EQ(mean.trials, 10);
   EXPECT_DOUBLE_EQ(average_trials(trials, 0, 0.1).data_V(0, 0), 37 / 8.0);  // without 100 and -50
   EXPECT_DOUBLE_EQ(average_trials(trials, 0, 0.19).data_V(0, 0), 37 / 8.0);
-  EXPECT_DOUBLE_EQ(average_trials(trials, 0, 0.45).data_V(0, 0), 4.5);  // the median
+  EXPECT_DOUBLE_EQ(average_trials(trials, 0, 0.45).data_V(0, 0), 4.5);          // the median
+  EXPECT_DOUBLE_EQ(average_trials(trials, 0, 0.4999999999).data_V(0, 0), 4.5);  // two are left
   EXPECT_DOUBLE_EQ(average_trials(trials, 0, 0.09).data_V(0, 0), 8.7);
   EXPECT_THROW(average_trials(trials, 0, 0.5), ExperimentError);
   EXPECT_THROW(average_trials(trials, 0, -0.1), ExperimentError);
