@@ -107,23 +107,28 @@ void check_left(const std::vector<TrialRecord>& records, const Labels& condition
                 const std::string& where) {
   std::vector<std::string> problems;
   for (const std::string& condition : conditions) {
-    std::map<std::string, int> reasons;
+    std::map<std::string, int> reasons, leads;
     bool left = false;
     for (const TrialRecord& record : records) {
       if (record.condition != condition) continue;
       left |= record.kept;
-      if (record.kept) continue;
-      ++reasons[record.channel.empty() ? record.reason
-                                       : fmt::format("{} at {}", record.reason, record.channel)];
+      if (!record.kept) ++reasons[record.reason];
+      if (!record.channel.empty()) ++leads[record.channel];
     }
     if (left) continue;
     Labels why;
     for (const auto& [reason, count] : reasons)
       why.push_back(fmt::format("{} x {}", count, reason));
-    problems.push_back(
-        fmt::format("condition '{}' has no trial left: {}. Compare trials.reject_uV, a high-pass "
-                    "(trials.high_pass_Hz), leads.bad.",
-                    condition, join_labels(why)));
+    std::string problem =
+        fmt::format("condition '{}' has no trial left: {}.", condition, join_labels(why));
+    const auto worst =
+        std::max_element(leads.begin(), leads.end(),
+                         [](const auto& x, const auto& y) { return x.second < y.second; });
+    if (worst != leads.end())
+      problem += fmt::format(
+          " Most often at {} ({} x): compare trials.reject_uV, trials.high_pass_Hz and leads.bad.",
+          worst->first, worst->second);
+    problems.push_back(problem);
   }
   if (!problems.empty()) throw InputError(problem_list(where, problems));
 }

@@ -96,6 +96,16 @@ TEST_F(CommandRecordings, TheBadLeadAndEveryDecisionIsListed) {
   const Table events =
       read_table(folder() / "recordings/sub-03/eeg/sub-03_task-pattern_events.tsv", "events");
   EXPECT_EQ(trials.rows.size(), events.rows.size());
+  // The predictor stands beside each trial: its mean is that of the regression.
+  const Table regression =
+      read_table(folder() / "decisions/sub-03/sub-03_regression.tsv", "regression");
+  double sum = 0, kept = 0;
+  for (std::size_t row = 0; row < trials.rows.size(); ++row) {
+    if (trials.rows[row][trials.column("kept")] != "yes") continue;
+    sum += trials.number(row, trials.column("surprise"));
+    ++kept;
+  }
+  EXPECT_NEAR(sum / kept, number_at(regression, "mean", {{"predictor", "surprise"}}), 1e-5);
   const Table good = read_table(folder() / "decisions/sub-01/sub-01_leads.tsv", "leads");
   EXPECT_TRUE(rows_with(good, {{"bad", "yes"}}).empty());
 }
@@ -190,6 +200,10 @@ TEST_F(CommandRecordings, ProblemsOfTheirExperimentFileAreListedAtOnce) {
   expect_said(done.err, {"'trials.to_ms' must lie after", "predictor 'surprise' is there twice",
                          "Did you mean 'surprise'?", "'trials.decimate' needs 'trials.low_pass_Hz'",
                          "'trials.filter_order' must be even", "'leads.bad_are' is \"gone\""});
+  write_file(folder() / "nobody.toml",
+             with(good, "[leads]", "[leads]\nbad = { sub-77 = [\"Fp1\"] }"));
+  expect_said(run({"inspect", "nobody.toml"}).err,
+              {"'leads.bad' names participant 'sub-77', who is not there"});
   write_file(folder() / "both.toml",
              good + "\n[averages]\nfile = \"a/{participant}_{condition}.tsv\"\ncounts = 3\n");
   expect_said(run({"inspect", "both.toml"}).err, {"there are both [averages] and [trials]"});

@@ -39,6 +39,21 @@ TEST(SignalTrialsFault, EventOfTwoConditions) {
                {"3 events of condition 'zero'", "line 2"});
 }
 
+TEST(SignalTrialsFault, AnEventThatStandsTwice) {
+  InventedRecording invented;
+  invented.add_event(5, "a", 1);
+  expect_parts(refusal(invented, plain_cut(0, 0.2)),
+               {"two events of condition 'A' begin at 5 s", "lines 6 and 20", "twice"});
+}
+
+TEST(SignalTrialsFault, EpochsBeyondAnyMachine) {
+  InventedRecording invented;
+  RandomStream random(8, "long recording");
+  invented.data_uV = random.normal_matrix(32, 130 * InventedRecording::rate);
+  expect_parts(refusal(invented, plain_cut(0, 105)),
+               {"18 epochs of 21001 samples", "20000 samples", "trials.to_ms"});
+}
+
 TEST(SignalTrialsFault, NoEvents) {
   InventedRecording invented;
   write_edf(invented.file(), invented.names, invented.rate, invented.data_uV, {});
@@ -66,7 +81,8 @@ TEST(SignalTrialsFault, AllTrialsRejected) {
   const InventedRecording invented;
   TrialOptions options = plain_cut(0, 0.2);
   options.reject_V = 1e-6;
-  expect_parts(refusal(invented, options), {"condition 'A' has no trial left: 9 x amplitude"});
+  expect_parts(refusal(invented, options),
+               {"condition 'A' has no trial left: 9 x amplitude", "Most often at ", "leads.bad"});
 }
 
 TEST(SignalTrialsFault, OptionsThatDoNotFitTheRecording) {
