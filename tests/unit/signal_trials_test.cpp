@@ -8,6 +8,7 @@
 #include <headwater/signal/spherical_spline.hpp>
 #include <headwater/signal/zero_phase_filter.hpp>
 
+#include <Eigen/Cholesky>
 #include <gtest/gtest.h>
 
 #include <cmath>
