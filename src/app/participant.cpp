@@ -114,11 +114,11 @@ ParticipantData load_participant(const Experiment& experiment, const std::string
   ParticipantData data;
   data.name = participant;
   data.cap = read_participant_cap(experiment, participant);
-  if (experiment.positions != "standard") data.inputs.push_back(data.cap.source);
   if (experiment.has_trials())
     load_trials(experiment, data);
   else
     load_averages(experiment, counts, data);
+  if (experiment.positions != "standard") data.inputs.push_back(data.cap.source);
   data.notes.insert(data.notes.begin(), data.cap.notes.begin(), data.cap.notes.end());
   check_noise(experiment, data);
   data.forward = forward_models.of(montage_of(experiment, data.cap, data.averages[0].channels),

@@ -25,10 +25,10 @@ struct PartLeftOut {
 
 /// What single trials gave beside their averages.
 struct TrialsSummary {
-  std::vector<TrialRecord> records;  ///< every chosen event
-  RegressionResult regression;       ///< names empty: none
+  std::vector<TrialRecord> records;   ///< every chosen event
+  RegressionResult regression;        ///< names empty: none
   std::vector<Regressor> predictors;  ///< of every event, in the order of regression.names
-  NormalBelief prior;                ///< of the ideal observer, where there is one
+  NormalBelief prior;                 ///< of the ideal observer, where there is one
 };
 
 struct ParticipantData {

@@ -105,10 +105,10 @@ Trials cut_trials(const Recording& recording, const ChannelEdits& edits,
 Average average_trials(const Trials& trials, std::size_t condition, double trim);
 
 /// Trials whose plain noise is that of the trimmed mean: at each channel and sample, with g =
-/// floor(trim n)/n of a condition, values beyond the g and 1-g order statistics are set to these, and
-/// the distances from the condition's mean of what results are divided by 1-2g. The variance of their
-/// mean is that of the trimmed mean (Tukey & McLaughlin 1963 Sankhya A 25:331), covariances between
-/// channels included, which a factor of efficiency would miss.
+/// floor(trim n)/n of a condition, values beyond the g and 1-g order statistics are set to these,
+/// and the distances from the condition's mean of what results are divided by 1-2g. The variance of
+/// their mean is that of the trimmed mean (Tukey & McLaughlin 1963 Sankhya A 25:331), covariances
+/// between channels included, which a factor of efficiency would miss.
 Trials winsorised(const Trials& trials, double trim);
 
 /// Share of one condition's trials beyond which a peak of its average is biased against another's:
