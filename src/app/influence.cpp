@@ -46,8 +46,20 @@ double index_change(const WindowInfluence& with_all, const LeftOut& without) {
   return change;
 }
 
-bool matters(const WindowInfluence& with_all, const LeftOut& without) {
-  return without.shift_m > WindowInfluence::kLargeShift ||
+/// The answer went to where its mirror image was: two sides nearly as large as one another, which
+/// is no fault of what was left out.
+bool changes_side(const ForwardModel& forward, const WindowInfluence& with_all,
+                  const LeftOut& without) {
+  constexpr double kNearImage = 30 * kMillimetre;
+  Eigen::Vector3d image = forward.grid.mni_m.col(with_all.point);
+  image.x() = -image.x();
+  return without.shift_m > WindowInfluence::kLargeShift &&
+         (forward.grid.mni_m.col(without.point) - image).norm() <= kNearImage;
+}
+
+bool matters(const ForwardModel& forward, const WindowInfluence& with_all, const LeftOut& without) {
+  return (without.shift_m > WindowInfluence::kLargeShift &&
+          !changes_side(forward, with_all, without)) ||
          index_change(with_all, without) > WindowInfluence::kLargeChange;
 }
 
@@ -67,6 +79,8 @@ std::string sentence(const ForwardModel& forward, const WindowInfluence& with_al
 /// recording few blocks.
 void judge(const ForwardModel& forward, WindowInfluence& influence) {
   std::string unstable;
+  int flips = 0;
+  std::string flipped;
   for (const std::string kind : {"lead", "trials", "participant"}) {
     std::vector<const LeftOut*> movers;
     std::size_t all = 0;
@@ -75,7 +89,11 @@ void judge(const ForwardModel& forward, WindowInfluence& influence) {
       ++all;
       entry.shift_m =
           (forward.grid.mni_m.col(entry.point) - forward.grid.mni_m.col(influence.point)).norm();
-      if (matters(influence, entry)) movers.push_back(&entry);
+      if (changes_side(forward, influence, entry)) {
+        ++flips;
+        flipped = kind + " " + entry.name;
+      }
+      if (matters(forward, influence, entry)) movers.push_back(&entry);
     }
     const bool few = movers.size() <= std::max<std::size_t>(1, all / 20);
     const LeftOut* worst = nullptr;
@@ -98,6 +116,11 @@ void judge(const ForwardModel& forward, WindowInfluence& influence) {
         "than {:g}",
         influence.note.empty() ? "" : "; ", unstable, WindowInfluence::kLargeShift / kMillimetre,
         WindowInfluence::kLargeChange);
+  if (flips > 0)
+    influence.note += fmt::format(
+        "{}both sides are nearly as large: without {} the other is the larger",
+        influence.note.empty() ? "" : "; ",
+        flips == 1 ? flipped : fmt::format("any one of {} leads, blocks or participants", flips));
 }
 
 }  // namespace

@@ -26,10 +26,11 @@ struct LeftOut {
 };
 
 /// A lead, block of trials or participant matters when the answer moves by more than kLargeShift
-/// without it, or the laterality of all lobes or the temporal-parietal index by more than
-/// kLargeChange (a lobe's size; the customary cut of such indices). A lead that matters carries
-/// more than its share when few others matter (at most one in twenty), or when the others predict
-/// it three times worse than they do the median lead.
+/// without it - other than to its mirror image, which says only that both sides are as large - or
+/// the laterality of all lobes or the temporal-parietal index by more than kLargeChange (a lobe's
+/// size; the customary cut of such indices). What matters carries more than its share when few
+/// others matter (at most one in twenty), or, a lead, when the others predict it three times worse
+/// than the median lead.
 struct WindowInfluence {
   static constexpr double kLargeShift = 20e-3, kLargeChange = 0.2, kLargeMisfit = 3;
   Eigen::Index point = 0;           ///< with all: largest point of the map, or of the scan
