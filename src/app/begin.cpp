@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include <headwater/app/begin.hpp>
+#include <headwater/app/experiment_file.hpp>
 #include <headwater/base/error.hpp>
 #include <headwater/base/json.hpp>
 #include <headwater/base/table.hpp>
@@ -48,10 +49,7 @@ std::vector<RecordingSet> find_recordings(const fs::path& folder) {
     if (*relative.begin() == "derivatives") continue;
     const std::string participant = participant_of(relative);
     if (participant.empty()) continue;
-    std::string pattern = relative.generic_string();
-    for (auto at = pattern.find(participant); at != std::string::npos;
-         at = pattern.find(participant, at + 13))
-      pattern.replace(at, participant.size(), "{participant}");
+    const std::string pattern = general_text(relative.generic_string(), participant);
     sets[pattern].pattern = pattern;
     sets[pattern].of_participant[participant] = entry->path();
   }
@@ -178,10 +176,8 @@ std::string montage_section(const Recording& recording, const std::string& start
   for (const auto& name : recording.used_names())
     if (!standard_direction(name)) unknown.push_back(name);
   if (!electrodes.empty()) {
-    std::string path = electrodes.lexically_relative(folder).generic_string();
-    const std::string who = participant_of(edf.lexically_relative(folder));
-    for (auto at = path.find(who); at != std::string::npos; at = path.find(who, at + 13))
-      path.replace(at, who.size(), "{participant}");
+    const std::string path = general_text(electrodes.lexically_relative(folder).generic_string(),
+                                          participant_of(edf.lexically_relative(folder)));
     text += fmt::format("positions = {}\nspace = \"own\"               # fitted to the head\n",
                         in_quotes(start + path));
   } else {
@@ -266,9 +262,10 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
       title = name->text();
   BegunExperiment begun;
   std::string note;
-  std::string others;
+  Labels others;
   for (std::size_t k = 1; k < sets.size() && k < 6; ++k)
-    others += fmt::format("  {} ({})\n", start + sets[k].pattern, sets[k].of_participant.size());
+    others.push_back(
+        fmt::format("{} ({})", start + sets[k].pattern, sets[k].of_participant.size()));
   begun.text = fmt::format(
       "# Written by `headwater begin` from what the folder holds. Read it through, change what is\n"
       "# not meant so, then: headwater inspect {0}\n# `headwater keys` explains every key. Paths "
@@ -276,9 +273,12 @@ BegunExperiment begin_experiment(const fs::path& folder, const fs::path& file) {
       "relative to this file.\n\ntitle = {1}\noutput = \"results\"\n\n",
       file.filename().string(), in_quotes(title));
   begun.text += participants_section(root, start, set, note);
-  if (!others.empty())
-    note += "Other recordings, not used (choose by trials.recording):\n" + others;
-  if (!others.empty()) begun.text += "# Other recordings in the folder:\n" + others;
+  if (!others.empty()) {
+    note += fmt::format("Other recordings, not used (choose by trials.recording):\n  {}\n",
+                        fmt::join(others, "\n  "));
+    begun.text += fmt::format("# Other recordings in the folder, not used:\n#   {}\n",
+                              fmt::join(others, "\n#   "));
+  }
   begun.text += trials_section(recording, start + set.pattern);
   begun.text += montage_section(recording, start, edf, root, note);
   begun.text += conditions_section(events);

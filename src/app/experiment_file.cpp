@@ -483,6 +483,10 @@ std::filesystem::path fill_pattern(const std::string& pattern, const std::string
   return replace_all(replace_all(pattern, "{participant}", participant), "{condition}", condition);
 }
 
+std::string general_text(const std::string& text, const std::string& participant) {
+  return replace_all(text, participant, "{participant}");
+}
+
 std::vector<TimeWindow> windows_of(const Experiment& experiment, const std::string& contrast) {
   std::vector<TimeWindow> windows;
   for (const auto& window : experiment.windows)

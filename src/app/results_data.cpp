@@ -5,6 +5,10 @@
 
 #include <headwater/base/units.hpp>
 
+#include <fmt/core.h>
+
+#include <cmath>
+
 namespace headwater {
 
 OutputTable lead_table(const ParticipantData& participant) {
@@ -56,8 +60,14 @@ OutputTable trial_table(const ParticipantData& participant) {
 
 OutputTable regression_table(const ParticipantData& participant) {
   const auto& regression = participant.trials->regression;
+  std::string about = "Predictors of the regression of single trials.";
+  if (const auto& prior = participant.trials->prior; prior)
+    about += fmt::format(
+        " The ideal observer begins with mean {:.6g} (worth {:g} values) and standard deviation "
+        "{:.6g} (worth {:g} values).",
+        prior->mean, prior->weight, std::sqrt(prior->scale / prior->shape), 2 * prior->shape);
   OutputTable table{
-      "Predictors of the regression of single trials.",
+      about,
       {{"predictor", "Predictor", ""},
        {"mean", "Mean over the trials used, before centring", ""},
        {"deviation", "Standard deviation over them: the coefficient's unit is uV for each", ""},

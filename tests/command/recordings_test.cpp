@@ -170,6 +170,12 @@ TEST_F(CommandRecordings, AnExperimentIsBegunFromTheirFolder) {
   EXPECT_EQ(again.exit_code, 2);
   expect_said(again.err, {"begun.toml is there already"});
   EXPECT_EQ(read_file(folder() / "begun.toml", "experiment"), text);
+  // A second task of one person: not used, said so, and the file stays readable.
+  fs::copy(folder() / "recordings/sub-01/eeg/sub-01_task-pattern_eeg.edf",
+           folder() / "recordings/sub-01/eeg/sub-01_task-zzz_eeg.edf");
+  const ProgramRun two = run({"begin", "recordings", "--output", "two.toml"});
+  expect_said(two.out, {"not used", "{participant}_task-zzz_eeg.edf (1)"});
+  EXPECT_EQ(run({"inspect", "two.toml", "--participant", "sub-01"}).exit_code, 0);
   const ProgramRun nothing = run({"begin", "averages", "--output", "other.toml"});
   EXPECT_EQ(nothing.exit_code, 3);
   expect_said(nothing.err, {"no recording found", "sub-"});

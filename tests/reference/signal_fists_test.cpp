@@ -51,10 +51,8 @@ std::map<std::string, double> band_power(const Recording& recording, const std::
 }
 
 TEST(SignalFists, RhythmOverTheHandAreaDropsOnTheOtherSide) {
-  const auto file = open_data() / "fists" / "S001R03.edf";
-  if (!std::filesystem::exists(file))
-    GTEST_SKIP() << "the open recordings 'fists' are not here (HEADWATER_OPEN_DATA)";
-  const Recording recording(file);
+  NEED_OPEN_DATA(folder, "fists");
+  const Recording recording(folder / "S001R03.edf");
   auto c3 = band_power(recording, "C3"), c4 = band_power(recording, "C4");
   const auto drop = [](std::map<std::string, double>& power, const std::string& fist) {
     return 100 * (1 - power.at(fist) / power.at("T0"));

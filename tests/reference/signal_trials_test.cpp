@@ -66,7 +66,7 @@ std::map<std::string, double> steps_of(const std::filesystem::path& edf) {
 // 16-bit steps of 0.001 to 0.007 uV, rounded to half a step at most, and so is their mean.
 TEST(SignalTrialsReference, PicturesAverageToThePublishedTables) {
   NEED_OPEN_DATA(folder, "pictures-averages");
-  if (!std::filesystem::exists(open_data() / "pictures")) GTEST_SKIP() << "no 'pictures' here";
+  NEED_OPEN_DATA(recordings, "pictures");
   const TrialCounts counts(read_table(folder / "trials.tsv", "counts"));
   ChannelEdits edits;
   edits.drop = {"X", "Y", "nd", "CZ"};
@@ -75,8 +75,7 @@ TEST(SignalTrialsReference, PicturesAverageToThePublishedTables) {
   int averages = 0;
   for (const auto& table : average_files(folder, "object")) {
     const std::string person = table.filename().string().substr(0, 8);
-    const auto edf =
-        open_data() / "pictures" / person / "eeg" / (person + "_task-pictures_eeg.edf");
+    const auto edf = recordings / person / "eeg" / (person + "_task-pictures_eeg.edf");
     const Trials trials = by_the_rule(all_trials(edf, edits));
     const auto steps = steps_of(edf);
     for (std::size_t place = 0; place < 3; ++place) {

@@ -99,6 +99,9 @@ Experiment read_experiment(const std::filesystem::path& file);
 std::filesystem::path fill_pattern(const std::string& pattern, const std::string& participant,
                                    const std::string& condition);
 
+/// The reverse: the text with a participant's name replaced by {participant}.
+std::string general_text(const std::string& text, const std::string& participant);
+
 /// Windows that are meant for a contrast.
 std::vector<TimeWindow> windows_of(const Experiment& experiment, const std::string& contrast);
 

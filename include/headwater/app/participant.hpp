@@ -19,7 +19,7 @@ inline constexpr const char* kMeanName = "mean";
 /// A contrast with part of the data left out: one matrix (M by T_w, as the contrast's data) for
 /// each of the contrast's windows.
 struct PartLeftOut {
-  std::string kind, name;  ///< "trials", "block 2 (trials 21 to 40)"; "participant", "sub-03"
+  std::string kind, name;  ///< "trials", "block 2 of 5"; "participant", "sub-03"
   std::vector<Eigen::MatrixXd> windows_V;
 };
 
@@ -28,7 +28,7 @@ struct TrialsSummary {
   std::vector<TrialRecord> records;   ///< every chosen event
   RegressionResult regression;        ///< names empty: none
   std::vector<Regressor> predictors;  ///< of every event, in the order of regression.names
-  NormalBelief prior;                 ///< of the ideal observer, where there is one
+  std::optional<NormalBelief> prior;  ///< of the ideal observer, where there is one
 };
 
 struct ParticipantData {

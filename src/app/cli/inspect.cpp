@@ -9,18 +9,12 @@
 namespace headwater::cli {
 namespace {
 
-std::string without(std::string text, const std::string& what) {
-  for (auto at = text.find(what); at != std::string::npos; at = text.find(what, at + 13))
-    text.replace(at, what.size(), "{participant}");
-  return text;
-}
-
 /// Notes, each once, with whom it concerns.
 void print_notes(const InspectReport& report) {
   std::vector<std::pair<std::string, Labels>> notes;
   for (const auto& participant : report.participants)
     for (const auto& note : participant.notes) {
-      const std::string general = without(note, participant.name);
+      const std::string general = general_text(note, participant.name);
       auto found = std::find_if(notes.begin(), notes.end(),
                                 [&](const auto& entry) { return entry.first == general; });
       if (found == notes.end()) found = notes.insert(found, {general, {}});
